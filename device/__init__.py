@@ -1,0 +1,1 @@
+"""The firmware: pure logic in control, one thin hardware layer in board."""

@@ -1,0 +1,1 @@
+"""The hardware seam: the interface, and one module a kind of board."""

@@ -1,0 +1,296 @@
+"""The controller: one tick after another, everything that the board decides.
+
+`tick` allocates nothing, in any state. `work` follows it when there is something that may allocate: a line from the
+host, a settings transfer.
+"""
+
+from device.control.buttons import Buttons
+from device.control.contacts import Contacts
+from device.control.endpoint import Endpoint
+from device.control.firing import Firing
+from device.control.followers import PERIOD_MS, Followers
+from device.control.lies import LieKeeper
+from device.control.memory import RequestMemory
+from device.control.outbox import Outbox
+from device.control.plant import Plant
+from device.control.queue import Queue
+from device.control.requests import Requests
+from device.control.store import SettingsStore
+from device.control.telling import Teller
+from device.control.throws import Throws
+from device.control.ticks import elapsed
+from shared_protocol import messages
+from shared_protocol.crc import CrcTables
+from shared_protocol.settings import Settings
+from shared_protocol.words import HELD_DOWN, SCOPE_BANK, WHY_HOST_LOST, WHY_LEAVING
+
+TYPE_CHECKING = False
+if TYPE_CHECKING:
+    from device.board.seam import Board
+
+# With nothing to do, the banks are still looked at this often.
+IDLE_US = 20_000
+SOON_US = 1000
+# Garbage is collected when nothing is due for this long (see Board.collect).
+COLLECT_IDLE_US = 10_000
+# When told to leave: the outcomes get this long to go out.
+LEAVE_MS = 300
+
+
+class Controller:
+    """Owns all parts. `due_us` tells the loop how long nothing is due; 0: tick again at once."""
+
+    def __init__(self, board: "Board") -> None:
+        self.board = board
+        tables = CrcTables()
+        self.outbox = Outbox(tables)
+        self.endpoint = Endpoint(board, tables, self.outbox)
+        self.store = SettingsStore(board, tables)
+        self.teller = Teller(board, self.outbox)
+        self.memory = RequestMemory(self.outbox)
+        self.requests = Requests(self)
+        self.lies = LieKeeper(board)
+        self.plant: "Plant | None" = None
+        self.queue: "Queue | None" = None
+        self._firing: "Firing | None" = None
+        self._contacts: "Contacts | None" = None
+        self._buttons: "Buttons | None" = None
+        self._followers: "Followers | None" = None
+        self.due_us = 0
+        self.has_work = False
+        self.may_collect = False
+        self._litter = False
+        self.leaving = False
+        self.left = False
+        self._reset_after = False
+        self._leave_ms = 0
+        self._host_there = False
+
+    # ---- settings
+
+    def start(self) -> None:
+        """Load the settings. At power-up nothing fires, unless they ask for the saved lies; then through the queue."""
+        settings = self.store.load()
+        if settings is not None:
+            self._build(settings)
+            assert self.plant is not None
+            if self.plant.restore:
+                self.lies.begin_restore(self.plant)
+
+    def take_settings(self, settings: Settings) -> None:
+        """Put new settings in force; what is known of unchanged motors stays known. Nothing fires."""
+        before = self.plant
+        self._build(settings)
+        if before is not None and self.plant is not None:
+            self.plant.keep_positions(before)
+
+    def _build(self, settings: Settings) -> None:
+        self.board.configure(settings)
+        plant = Plant(settings, self.board, self.outbox)
+        throws = Throws(plant, self.outbox, self.memory)
+        firing = Firing(plant, self.board, self.outbox, throws)
+        queue = Queue(plant, self.outbox, self.memory, firing, throws)
+        self.plant = plant
+        self._firing = firing
+        self.queue = queue
+        self._contacts = Contacts(plant, firing)
+        self._buttons = Buttons(plant, queue)
+        self._followers = Followers(plant, self.board)
+        for bank in range(len(plant.banks)):
+            self.board.charge(bank, True)
+
+    # ---- the loop
+
+    def tick(self) -> None:
+        """One tick. Allocates nothing."""
+        board = self.board
+        now_ms = board.ticks_ms()
+        board.feed_watchdog()
+        self.endpoint.read()
+        self.endpoint.sweep(now_ms)
+        if self.endpoint.told_to_leave and not self.leaving:
+            self.leave(False, now_ms)
+        if self.plant is not None:
+            self._tick_plant(self.plant, now_ms)
+        self._watch_host(now_ms)
+        self.teller.bad_lines = self.endpoint.bad_lines
+        self.teller.sweep(now_ms)
+        if self.outbox.open:
+            self.teller.tick(self.plant, self.queue, now_ms)
+            if self.teller.sending_settings:
+                self.teller.send_settings()
+            self.outbox.tick(now_ms)
+            self.endpoint.write(self.busy)
+        if self.leaving:
+            self._go_on_leaving(now_ms)
+        self.has_work = self.endpoint.line_waiting or self.lies.wants_work
+        self.due_us = self._due_us(now_ms)
+        self.may_collect = self._litter and self.due_us >= COLLECT_IDLE_US
+
+    def _tick_plant(self, plant: Plant, now_ms: int) -> None:
+        queue = self.queue
+        firing = self._firing
+        contacts = self._contacts
+        buttons = self._buttons
+        followers = self._followers
+        if queue is None or firing is None or contacts is None or buttons is None or followers is None:
+            return
+        for gate in plant.banks:
+            gate.update(now_ms)
+        for watch in plant.watches:
+            watch.update(now_ms)
+        self._cut_off(plant)
+        plant.motors.sweep(now_ms)
+        changed = contacts.tick(now_ms)
+        buttons.tick(now_ms, changed, firing.busy)
+        if buttons.wants_stop or buttons.wants_release or buttons.wants_clear:
+            self._board_buttons(buttons, now_ms)
+        self.lies.tick(plant, queue, now_ms, self.leaving)
+        fired = firing.fired
+        queue.tick(now_ms)
+        if firing.fired != fired:
+            self._litter = True
+        followers.tick(now_ms)
+
+    def _board_buttons(self, buttons: Buttons, now_ms: int) -> None:
+        if buttons.wants_stop:
+            self.stop(now_ms)
+        elif buttons.wants_release:
+            self.release()
+        if buttons.wants_clear:
+            self.clear_all()
+        buttons.wants_stop = False
+        buttons.wants_release = False
+        buttons.wants_clear = False
+
+    def _cut_off(self, plant: Plant) -> None:
+        """A bank that is held down is no longer charged, where a cut-off is fitted."""
+        codes = plant.faults.codes[SCOPE_BANK]
+        for gate in plant.banks:
+            wanted = codes[gate.number] != HELD_DOWN
+            if gate.charge_on != wanted:
+                gate.charge_on = wanted
+                self.board.charge(gate.number, wanted)
+
+    def _watch_host(self, now_ms: int) -> None:
+        silence_ms = self.plant.silence_ms if self.plant is not None else 3000
+        there = self.endpoint.silent_ms(now_ms) <= silence_ms
+        if self._host_there and not there:
+            self.outbox.open = False
+            self.store.staging_lost = self.store.staging
+            if self.queue is not None:
+                self.queue.cancel_waiting(WHY_HOST_LOST, True, now_ms)
+        self._host_there = there
+
+    def _due_us(self, now_ms: int) -> int:
+        """How long nothing is due."""
+        if self.has_work or self.leaving or self.outbox.to_send or self.teller.telling:
+            return 0
+        if self.queue is not None and self.queue.throws.count:
+            return 0
+        due_us = self.teller.due_ms(self.plant, now_ms) * 1000
+        if due_us > IDLE_US:
+            due_us = IDLE_US
+        if self._contacts is not None and self._contacts.sampling:
+            return SOON_US
+        if self._buttons is not None and self._buttons.watching:
+            return SOON_US
+        if self._followers is not None and self._followers.any and due_us > PERIOD_MS * 1000:
+            due_us = PERIOD_MS * 1000
+        return due_us
+
+    # ---- what may allocate
+
+    def work(self) -> None:
+        """Handle the line that waits, and other work that may allocate."""
+        now_ms = self.board.ticks_ms()
+        self._litter = True
+        if self.store.staging_lost:
+            self.store.abandon()
+        if self.endpoint.line_waiting:
+            decoded = self.endpoint.take_line(now_ms)
+            if decoded is not None:
+                self._host_there = True
+                self.requests.take(decoded, self.endpoint.body(), now_ms)
+        if self.lies.wants_work and self.plant is not None:
+            self.lies.work(self.plant, now_ms)
+        self.has_work = False
+
+    def collected(self) -> None:
+        """The loop has collected garbage."""
+        self._litter = False
+        self.may_collect = False
+
+    # ---- requests of host and panel
+
+    @property
+    def busy(self) -> bool:
+        """True while throws wait or run."""
+        return self.queue is not None and self.queue.throws.count > 0
+
+    def stop(self, now_ms: int) -> None:
+        """The operator's stop."""
+        if self.queue is not None:
+            self.queue.stop(now_ms)
+
+    def release(self) -> None:
+        """Ends the stop."""
+        if self.plant is not None:
+            self.plant.stopped = False
+
+    def clear(self, scope: int, number: int) -> bool:
+        """Put one bank, junction or button back into use; False if it was not out."""
+        plant = self.plant
+        if plant is None or number >= len(plant.faults.codes[scope]):
+            return False
+        cleared = plant.faults.clear(scope, number)
+        if cleared and scope == SCOPE_BANK:
+            plant.watches[number].begin(False)
+        return cleared
+
+    def clear_all(self) -> bool:
+        """Put everything back into use; False if nothing was out."""
+        plant = self.plant
+        cleared = False
+        if plant is not None:
+            for scope in range(3):
+                for number in range(len(plant.faults.codes[scope])):
+                    if self.clear(scope, number):
+                        cleared = True
+        return cleared
+
+    def refuse(self, request: int, junction: int, lie: int, outcome: int, why: int) -> None:
+        """Refuse a throw that the queue never sees."""
+        values = self.outbox.kept(messages.OUTCOME)
+        values[1] = request
+        values[2] = 0
+        values[3] = junction
+        values[4] = lie
+        values[5] = outcome
+        values[6] = why
+        values[7] = -1
+        values[8] = -1
+        values[9] = -1
+        values[10] = -1
+
+    def leave(self, reset: bool, now_ms: int) -> None:
+        """Finish the running pulse, cancel the queue with outcomes, then leave the loop, or start again."""
+        self.leaving = True
+        self._reset_after = reset
+        self._leave_ms = now_ms
+        if self.queue is not None:
+            self.queue.cancel_waiting(WHY_LEAVING, False, now_ms)
+
+    def _go_on_leaving(self, now_ms: int) -> None:
+        if self.busy:
+            self._leave_ms = now_ms
+            if self.plant is not None and self.queue is not None:
+                self.plant.stopped = True
+                self.queue.cancel_waiting(WHY_LEAVING, False, now_ms)
+            return
+        if self.outbox.to_send and elapsed(now_ms, self._leave_ms) < LEAVE_MS:
+            return
+        if self._reset_after:
+            self.board.reset()
+        else:
+            self.left = True

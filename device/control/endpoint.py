@@ -1,0 +1,83 @@
+"""The board's end of the link: bytes in and out, a few a tick, and whether a host is there."""
+
+from device.control.outbox import Outbox
+from device.control.ticks import Marks
+from shared_protocol.crc import CrcTables
+from shared_protocol.line import GOOD, Decoded, LineDecoder
+from shared_protocol.messages import board_reads
+from shared_protocol.reader import LINE, NOTHING, TEXT, LineReader
+
+TYPE_CHECKING = False
+if TYPE_CHECKING:
+    from device.board.seam import Board
+
+# Bytes a tick. A throw that waits for its moment must not wait for telemetry.
+BYTES_IN = 64
+BYTES_OUT = 64
+BYTES_OUT_BUSY = 16
+LEAVE_BYTE = 3
+
+_HEARD = 0
+
+
+class Endpoint:
+    """Reads and writes the link. `line_waiting` is True when a whole line is to be handled."""
+
+    def __init__(self, board: "Board", tables: CrcTables, outbox: Outbox) -> None:
+        self._board = board
+        self._outbox = outbox
+        self._reader = LineReader(tables)
+        self._decoder = LineDecoder(board_reads())
+        self._marks = Marks(1)
+        self.line_waiting = False
+        self.told_to_leave = False
+        self.bad_lines = 0
+
+    def read(self) -> None:
+        """Take bytes until a line is whole, at most BYTES_IN."""
+        if self.line_waiting:
+            return
+        for _ in range(BYTES_IN):
+            byte = self._board.read_byte()
+            if byte < 0:
+                return
+            if byte == LEAVE_BYTE:
+                self.told_to_leave = True
+                continue
+            result = self._reader.feed(byte)
+            if result == LINE:
+                self.line_waiting = True
+                return
+            if result != NOTHING and (self._reader.length or result != TEXT):
+                self.bad_lines += 1
+
+    def write(self, busy: bool) -> None:
+        """Give bytes to the board as long as it takes them."""
+        outbox = self._outbox
+        for _ in range(BYTES_OUT_BUSY if busy else BYTES_OUT):
+            byte = outbox.take_byte()
+            if byte < 0 or not self._board.write_byte(byte):
+                return
+            outbox.byte_sent()
+
+    def take_line(self, now_ms: int) -> "Decoded | None":
+        """Decode the line that waits; None (and counted) if it is not a right message. Allocates."""
+        self.line_waiting = False
+        decoded = self._decoder.decode(bytes(self._reader.buffer[: self._reader.length]))
+        if decoded.fault != GOOD:
+            self.bad_lines += 1
+            return None
+        self._marks.set(_HEARD, now_ms)
+        return decoded
+
+    def body(self) -> bytes:
+        """The body of the line that was taken last."""
+        return bytes(self._reader.buffer[: self._reader.length])
+
+    def silent_ms(self, now_ms: int) -> int:
+        """How long the host has been silent."""
+        return self._marks.since(_HEARD, now_ms)
+
+    def sweep(self, now_ms: int) -> None:
+        """Keep marks right; once a tick."""
+        self._marks.sweep(now_ms)

@@ -1,0 +1,125 @@
+"""The bank gate: what a bank holds now, and whether a pulse may start on it.
+
+The decision uses the lowest of the newest fresh samples: noise can only make a pulse later, never earlier. The state
+shown to people has hysteresis, so that noise at the threshold does not make it flicker.
+"""
+
+from device.control import recharge
+from device.control.ticks import Marks
+from shared_protocol.settings import BankSettings, Settings
+from shared_protocol.words import (
+    BANK_CHARGING,
+    BANK_CUT_OFF,
+    BANK_OUT,
+    BANK_PULSE,
+    BANK_READY,
+    BANK_SETTLING,
+    BANK_STALE,
+)
+
+TYPE_CHECKING = False
+if TYPE_CHECKING:
+    from device.board.seam import Board
+
+_SINCE_FRESH = 0
+
+
+class BankGate:
+    """One bank. `update` once a tick, before anything asks."""
+
+    def __init__(self, number: int, settings: Settings, board: "Board") -> None:
+        self.number = number
+        self.settings: "BankSettings" = settings.banks[number]
+        self._board = board
+        self._hysteresis_mv = settings.timing.hysteresis_mv if settings.timing else 0
+        self._marks = Marks(1)
+        self.top_ready_mv = top_ready_mv(settings, number)
+        self.low_mv = -1
+        self.mean_mv = -1
+        self.fresh = False
+        self.running = False
+        self.charge_on = True
+        self._shown_ready = False
+        # The pulse that runs, or the last one.
+        self.before_mv = -1
+        self.lowest_mv = -1
+        self.last_junction = -1
+        self.ended = False
+
+    def update(self, now_ms: int) -> None:
+        """Read the board."""
+        board = self._board
+        running = board.pulse_running(self.number)
+        self.ended = self.running and not running
+        self.running = running
+        self.low_mv = board.bank_low_mv(self.number)
+        self.fresh = self.low_mv >= 0 and not running
+        if self.fresh:
+            self.mean_mv = board.bank_mean_mv(self.number)
+            self._marks.set(_SINCE_FRESH, now_ms)
+            if self.low_mv >= self.top_ready_mv:
+                self._shown_ready = True
+            elif self.low_mv < self.top_ready_mv - self._hysteresis_mv:
+                self._shown_ready = False
+        if self.before_mv >= 0:
+            last_mv = board.bank_last_mv(self.number)
+            if 0 <= last_mv < self.lowest_mv:
+                self.lowest_mv = last_mv
+        self._marks.sweep(now_ms)
+
+    def pulse_begins(self, junction: int) -> None:
+        """A pulse has just been started."""
+        self.running = True
+        self.fresh = False
+        self.before_mv = self.mean_mv
+        self.lowest_mv = self.mean_mv
+        self.last_junction = junction
+        self._shown_ready = False
+
+    def pulse_judged(self) -> None:
+        """The last pulse's readings are used up."""
+        self.before_mv = -1
+
+    def allows(self, ready_mv: int) -> bool:
+        """True if fresh samples are at or above `ready_mv` and no pulse or gap runs."""
+        return self.fresh and not self.running and self.low_mv >= ready_mv
+
+    def ms_until(self, ready_mv: int) -> int:
+        """Expected time until `allows`, from the last mean; recharge.NEVER if it can't be told."""
+        if self.mean_mv < 0:
+            return recharge.NEVER
+        from_mv = self.mean_mv
+        if self.running:
+            from_mv = self.lowest_mv
+        return recharge.ms_until(self.settings, from_mv, ready_mv)
+
+    def age_ms(self, now_ms: int) -> int:
+        """Age of the last fresh reading."""
+        return self._marks.since(_SINCE_FRESH, now_ms)
+
+    def state(self, now_ms: int, out: bool) -> int:
+        """The word of words.BANK_STATES."""
+        if out:
+            return BANK_OUT
+        if self.running:
+            return BANK_PULSE
+        if not self.charge_on:
+            return BANK_CUT_OFF
+        if not self.fresh:
+            return BANK_SETTLING if self.age_ms(now_ms) < 200 else BANK_STALE
+        return BANK_READY if self._shown_ready else BANK_CHARGING
+
+
+def top_ready_mv(settings: Settings, bank: int) -> int:
+    """The highest ready voltage of any lie that fires this bank, a retry's raise included."""
+    top_mv = 0
+    for junction in settings.junctions:
+        uses = False
+        for motor in junction.motors:
+            uses = uses or settings.motors[motor].bank == bank
+        if not uses:
+            continue
+        for lie in junction.lies:
+            if lie.ready_mv + junction.retry_mv > top_mv:
+                top_mv = lie.ready_mv + junction.retry_mv
+    return top_mv

@@ -1,0 +1,164 @@
+"""Telemetry, and answers of many lines (status, settings): in a tick no more than the outbox has room for."""
+
+from device.control.outbox import Outbox
+from device.control.plant import Plant
+from device.control.queue import Queue
+from device.control.ticks import LONG_AGO, Marks
+from shared_protocol import messages
+from shared_protocol.words import THROW_WAITING
+
+TYPE_CHECKING = False
+if TYPE_CHECKING:
+    from device.board.seam import Board
+
+_BANKS, _EXPECT, _SECOND = 0, 1, 2
+EXPECT_MS = 500
+_NOT_TELLING = -1
+
+
+class Teller:
+    """Tells the host how things are."""
+
+    def __init__(self, board: "Board", outbox: Outbox) -> None:
+        self._board = board
+        self._outbox = outbox
+        self._marks = Marks(3)
+        self._place = _NOT_TELLING
+        self._lines: "list[bytes]" = []
+        self._line = 0
+        self._sending = False
+        self.up_s = 0
+        self.bad_lines = 0
+
+    def sweep(self, now_ms: int) -> None:
+        """Count the seconds since the boot; keep marks right. Once a tick."""
+        passed = self._marks.since(_SECOND, now_ms)
+        if passed >= 1000:
+            self._marks.set(_SECOND, now_ms)
+            if passed != LONG_AGO:
+                self.up_s += passed // 1000
+        self._marks.sweep(now_ms)
+
+    # ---- answers of many lines
+
+    def begin_status(self) -> None:
+        """Tell everything, from the next tick on."""
+        self._place = 0
+
+    def begin_settings(self, lines: "list[bytes]") -> None:
+        """Send these record bodies, then the end."""
+        self._lines = lines
+        self._line = 0
+        self._sending = True
+
+    @property
+    def sending_settings(self) -> bool:
+        """True while settings are on their way."""
+        return self._sending
+
+    @property
+    def telling(self) -> bool:
+        """True while a long answer is on its way."""
+        return self._place != _NOT_TELLING or self._sending
+
+    def send_settings(self) -> None:
+        """Hand the next record to the outbox if it is idle. Allocates nothing; the lines are there."""
+        if not self._outbox.quiet:
+            return
+        if self._line < len(self._lines):
+            if self._outbox.raw(self._lines[self._line]):
+                self._line += 1
+            return
+        self._sending = False
+        self._lines = []
+        values = self._outbox.plain(messages.END)
+        values[0] = messages.ASK_SETTINGS
+
+    def tick(self, plant: "Plant | None", queue: "Queue | None", now_ms: int) -> None:
+        """Go on with a status; send telemetry when it is due."""
+        if self._place != _NOT_TELLING:
+            if self._outbox.has_room():
+                self._tell_next(plant, queue, now_ms)
+            return
+        if plant is None or queue is None or not self._outbox.open:
+            return
+        if self._marks.since(_BANKS, now_ms) >= plant.tell_ms:
+            self._marks.set(_BANKS, now_ms)
+            for number in range(len(plant.banks)):
+                self._tell_bank(plant, number, now_ms)
+            self._tell_state(plant, queue)
+        if queue.throws.count and (queue.throws.changed or self._marks.since(_EXPECT, now_ms) >= EXPECT_MS):
+            queue.throws.changed = False
+            self._marks.set(_EXPECT, now_ms)
+            for place in range(queue.throws.count):
+                self._tell_expect(queue, place, now_ms)
+
+    def due_ms(self, plant: "Plant | None", now_ms: int) -> int:
+        """How long until telemetry is due."""
+        if plant is None or not self._outbox.open:
+            return 1000
+        left = plant.tell_ms - self._marks.since(_BANKS, now_ms)
+        return left if left > 0 else 0
+
+    def _tell_next(self, plant: "Plant | None", queue: "Queue | None", now_ms: int) -> None:
+        """One line of the status: state, banks, junctions, queue, faults, end."""
+        place = self._place
+        self._place += 1
+        if plant is not None and queue is not None:
+            if place == 0:
+                self._tell_state(plant, queue)
+                return
+            place -= 1
+            if place < len(plant.banks):
+                self._tell_bank(plant, place, now_ms)
+                return
+            place -= len(plant.banks)
+            if place < len(plant.junctions):
+                plant.junctions[place].tell()
+                return
+            place -= len(plant.junctions)
+            if place < queue.throws.count:
+                self._tell_expect(queue, place, now_ms)
+                return
+            self._tell_faults(plant)
+        self._place = _NOT_TELLING
+        values = self._outbox.plain(messages.END)
+        values[0] = messages.ASK_STATUS
+
+    def _tell_faults(self, plant: Plant) -> None:
+        for scope in range(3):
+            codes = plant.faults.codes[scope]
+            for number in range(len(codes)):
+                if codes[number]:
+                    plant.faults.tell(scope, number)
+
+    def _tell_bank(self, plant: Plant, number: int, now_ms: int) -> None:
+        gate = plant.banks[number]
+        age_ms = gate.age_ms(now_ms)
+        values = self._outbox.plain(messages.BANK)
+        values[0] = number
+        values[1] = gate.mean_mv
+        values[2] = age_ms
+        values[3] = gate.state(now_ms, plant.faults.bank_out(number))
+        values[4] = gate.ms_until(gate.top_ready_mv)
+
+    def _tell_state(self, plant: Plant, queue: Queue) -> None:
+        values = self._outbox.plain(messages.STATE)
+        values[0] = 1 if plant.stopped else 0
+        values[1] = queue.throws.count
+        values[2] = self.up_s
+        values[3] = self._outbox.dropped
+        values[4] = self.bad_lines
+        values[5] = self._board.inputs(0)
+        values[6] = self._board.inputs(1)
+
+    def _tell_expect(self, queue: Queue, place: int, now_ms: int) -> None:
+        throw = queue.throws.order[place]
+        values = self._outbox.plain(messages.EXPECT)
+        values[0] = throw.id
+        values[1] = throw.step
+        values[2] = throw.junction
+        values[3] = throw.lie
+        values[4] = throw.origin
+        values[5] = throw.state
+        values[6] = queue.estimate_ms(throw, now_ms) if throw.state == THROW_WAITING else 0

@@ -1,0 +1,1 @@
+"""The one table of messages and settings, with framing and integrity: shared by board and host."""
