@@ -22,7 +22,7 @@ class Received:
     def get(self, key: str) -> object:
         """The value of a field. Raises KeyError if the message has no such field."""
         assert self.message is not None
-        return self.values[self.message.positions[key]]
+        return self.values[self.message.position(key)]
 
     def number(self, key: str) -> int:
         """The value of a whole-number or word field (a word as its index)."""
@@ -33,7 +33,7 @@ class Received:
     def word(self, key: str) -> str:
         """The word of a word field."""
         assert self.message is not None
-        return self.message.fields[self.message.positions[key]].words[self.number(key)]
+        return self.message.fields[self.message.position(key)].words[self.number(key)]
 
     def name(self, key: str) -> str:
         """The text of a name field."""
@@ -111,7 +111,7 @@ class Codec:
 def values_from(message: Message, given: "dict[str, object]") -> "list[object]":
     """Values in table order from plain ones: words and names as text. Raises ValueOutOfTable naming the field."""
     for key in given:
-        if key not in message.positions:
+        if not message.has(key):
             raise ValueOutOfTable("%s: %s" % (message.name, key))
     values: "list[object]" = []
     for field in message.fields:

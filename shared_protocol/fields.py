@@ -28,49 +28,57 @@ class Field:
     most: longest list. unit, text: for people; empty on a board.
     """
 
-    def __init__(
-        self,
-        key: str,
-        kind: int,
-        low: int,
-        high: int,
-        unit: str,
-        text: str,
-        words: "tuple[str, ...]" = (),
-        most: int = 0,
-        default: "int | None" = None,
-    ) -> None:
+    # What most fields do not have: kept once, in the class. A board has some 180 fields and little memory.
+    words: "tuple[str, ...]" = ()
+    word_bytes: "tuple[bytes, ...]" = ()
+    most = 0
+    default: "int | None" = None
+    unit = ""
+    text = ""
+
+    def __init__(self, key: str, kind: int, low: int, high: int) -> None:
         self.key = key
         self.kind = kind
         self.low = low
         self.high = high
-        self.words = words
-        self.word_bytes = tuple([word.encode() for word in words])
-        self.most = most
-        self.default = default
         self.prefix = b'"' + key.encode() + b'":'
-        self.unit = unit if KEEPS_TEXTS else ""
-        self.text = text if KEEPS_TEXTS else ""
+
+    def explained(self, unit: str, text: str) -> "Field":
+        """Keep unit and sentence, where there is memory for them."""
+        if KEEPS_TEXTS:
+            self.unit = unit
+            self.text = text
+        return self
 
 
 def whole(key: str, low: int, high: int, unit: str, text: str, default: "int | None" = None) -> Field:
     """A whole number field."""
-    return Field(key, INT, low, high, unit, text, (), 0, default)
+    field = Field(key, INT, low, high).explained(unit, text)
+    if default is not None:
+        field.default = default
+    return field
 
 
 def word(key: str, words: "tuple[str, ...]", text: str, default: "int | None" = None) -> Field:
     """A field that holds one of some fixed ASCII words."""
-    return Field(key, WORD, 0, len(words) - 1, "", text, words, 0, default)
+    field = Field(key, WORD, 0, len(words) - 1).explained("", text)
+    field.words = words
+    field.word_bytes = tuple([each.encode() for each in words])
+    if default is not None:
+        field.default = default
+    return field
 
 
 def name(key: str, text: str, high: int = NAME_MAX, low: int = 0) -> Field:
     """A short printable ASCII text without quote and backslash."""
-    return Field(key, NAME, low, high, "bytes", text)
+    return Field(key, NAME, low, high).explained("bytes", text)
 
 
 def numbers(key: str, low: int, high: int, most: int, text: str) -> Field:
     """A list of at most `most` whole numbers."""
-    return Field(key, INTS, low, high, "", text, (), most)
+    field = Field(key, INTS, low, high).explained("", text)
+    field.most = most
+    return field
 
 
 def name_is_plain(value: bytes) -> bool:
@@ -110,12 +118,28 @@ class Message:
     `kept` messages carry a number `q` as their first field; the board sends them again until acknowledged.
     """
 
+    text = ""
+
     def __init__(self, name: str, fields: "tuple[Field, ...]", text: str, kept: bool = False) -> None:
         self.name = name
         self.fields = fields
         self.kept = kept
         self.prefix = b'{"m":"' + name.encode() + b'"'
-        self.text = text if KEEPS_TEXTS else ""
-        self.positions: "dict[str, int]" = {}
-        for position in range(len(fields)):
-            self.positions[fields[position].key] = position
+        if KEEPS_TEXTS:
+            self.text = text
+
+    def position(self, key: str) -> int:
+        """The place of the field `key`. Raises KeyError if there is none."""
+        place = 0
+        for field in self.fields:
+            if field.key == key:
+                return place
+            place += 1
+        raise KeyError(key)
+
+    def has(self, key: str) -> bool:
+        """True if there is such a field."""
+        for field in self.fields:
+            if field.key == key:
+                return True
+        return False

@@ -1,11 +1,12 @@
 """The table of messages: what host and board may say to each other.
 
+No functions here: on a board the sentences of a module without functions are let go after its import.
+
 The first exchange (hello, board, wrong_version) is frozen: it never changes, whatever the protocol version.
 """
 
 from shared_protocol import words
 from shared_protocol.fields import INT_MAX, Message, name, whole, word
-from shared_protocol.settings_table import SETTINGS
 
 VERSION = 1
 FIRMWARE = b"1.0.0"
@@ -269,23 +270,3 @@ TO_HOST = (
     STATE,
     END,
 )
-
-
-def by_name(messages: "tuple[Message, ...]") -> "dict[str, Message]":
-    """The messages under their names on the wire. Raises ValueError if two share one."""
-    found: "dict[str, Message]" = {}
-    for message in messages:
-        if message.name in found:
-            raise ValueError(message.name)
-        found[message.name] = message
-    return found
-
-
-def board_reads() -> "dict[str, Message]":
-    """What a board understands: requests and settings records."""
-    return by_name(TO_BOARD + SETTINGS)
-
-
-def host_reads() -> "dict[str, Message]":
-    """What a host understands: answers, telemetry and settings records."""
-    return by_name(TO_HOST + SETTINGS)

@@ -1,6 +1,7 @@
 """The fixed words of the wire: outcomes, reasons, faults, states; with what they mean and what to do.
 
 Each word is sent as ASCII and kept in memory as its index. The numbers are never reused.
+No functions here: on a board the sentences of a module without functions are let go after its import.
 """
 
 from shared_protocol.fields import KEEPS_TEXTS
@@ -156,11 +157,6 @@ REASON_TEXTS = tuple([row[1] for row in _REASON_TABLE]) if KEEPS_TEXTS else ()
 REASON_REMEDIES = tuple([row[2] for row in _REASON_TABLE]) if KEEPS_TEXTS else ()
 
 
-def reason(word: str) -> int:
-    """The number of a reason word. Raises ValueError if there is none."""
-    return REASONS.index(word)
-
-
 # (word, reason, remedy, evidence 1, evidence 2). The number of a fault (from 1) is its blink code.
 _FAULT_TABLE = (
     ("none", "no fault", "", "", ""),
@@ -212,6 +208,11 @@ _FAULT_TABLE = (
 FAULTS = tuple([row[0] for row in _FAULT_TABLE])
 FAULT_TEXTS = _FAULT_TABLE if KEEPS_TEXTS else ()
 
+if not KEEPS_TEXTS:
+    # A board sends words, not sentences: let them go.
+    del _REASON_TABLE
+    del _FAULT_TABLE
+
 RECHARGE_STALLED = 1
 SUPPLY_MISSING = 2
 NO_DROP = 3
@@ -220,44 +221,44 @@ SENSE_RANGE = 5
 CONTACTS_DISAGREE = 6
 BUTTON_STUCK = 7
 
-WHY_SEEN = reason("seen")
-WHY_SENT = reason("sent")
-WHY_ARRIVED = reason("arrived")
-WHY_ALREADY = reason("already")
-WHY_BELOW_READY = reason("below_ready")
-WHY_RESTING = reason("resting")
-WHY_GAP = reason("gap")
-WHY_PULSE_RUNNING = reason("pulse_running")
-WHY_STALE = reason("stale")
-WHY_QUEUED_AHEAD = reason("queued_ahead")
-WHY_BANK_OUT = reason("bank_out")
-WHY_JUNCTION_OUT = reason("junction_out")
-WHY_STOP = reason("stop")
-WHY_NOT_WHILE = reason("not_while")
-WHY_QUEUE_FULL = reason("queue_full")
-WHY_BOARD_RESTARTED = reason("board_restarted")
-WHY_NO_SUCH_JUNCTION = reason("no_such_junction")
-WHY_NO_SUCH_LIE = reason("no_such_lie")
-WHY_NO_SUCH_ROUTE = reason("no_such_route")
-WHY_OLD_ID = reason("old_id")
-WHY_LONGEST_WAIT = reason("longest_wait")
-WHY_OPERATOR = reason("operator")
-WHY_HOST_LOST = reason("host_lost")
-WHY_ROUTE_FAILED = reason("route_failed")
-WHY_LEAVING = reason("leaving")
-WHY_NO_CONTACT = reason("no_contact")
-WHY_ONE_OF_TWO = reason("one_of_two")
-WHY_NO_DROP = reason("no_drop")
-WHY_KEPT_ON = reason("kept_on")
-WHY_CONTACTS_DISAGREE = reason("contacts_disagree")
-WHY_HELD_DOWN = reason("held_down")
-WHY_FORBIDDEN = reason("forbidden")
-WHY_SETTINGS_COMING = reason("settings_coming")
-WHY_NO_SETTINGS = reason("no_settings")
-WHY_BUSY = reason("busy")
-WHY_NOT_OUT = reason("not_out")
-WHY_NO_SUCH_THROW = reason("no_such_throw")
-WHY_OK = reason("ok")
-WHY_WRONG_COUNT = reason("wrong_count")
-WHY_WRONG_CRC = reason("wrong_crc")
-WHY_FLASH = reason("flash")
+WHY_SEEN = REASONS.index("seen")
+WHY_SENT = REASONS.index("sent")
+WHY_ARRIVED = REASONS.index("arrived")
+WHY_ALREADY = REASONS.index("already")
+WHY_BELOW_READY = REASONS.index("below_ready")
+WHY_RESTING = REASONS.index("resting")
+WHY_GAP = REASONS.index("gap")
+WHY_PULSE_RUNNING = REASONS.index("pulse_running")
+WHY_STALE = REASONS.index("stale")
+WHY_QUEUED_AHEAD = REASONS.index("queued_ahead")
+WHY_BANK_OUT = REASONS.index("bank_out")
+WHY_JUNCTION_OUT = REASONS.index("junction_out")
+WHY_STOP = REASONS.index("stop")
+WHY_NOT_WHILE = REASONS.index("not_while")
+WHY_QUEUE_FULL = REASONS.index("queue_full")
+WHY_BOARD_RESTARTED = REASONS.index("board_restarted")
+WHY_NO_SUCH_JUNCTION = REASONS.index("no_such_junction")
+WHY_NO_SUCH_LIE = REASONS.index("no_such_lie")
+WHY_NO_SUCH_ROUTE = REASONS.index("no_such_route")
+WHY_OLD_ID = REASONS.index("old_id")
+WHY_LONGEST_WAIT = REASONS.index("longest_wait")
+WHY_OPERATOR = REASONS.index("operator")
+WHY_HOST_LOST = REASONS.index("host_lost")
+WHY_ROUTE_FAILED = REASONS.index("route_failed")
+WHY_LEAVING = REASONS.index("leaving")
+WHY_NO_CONTACT = REASONS.index("no_contact")
+WHY_ONE_OF_TWO = REASONS.index("one_of_two")
+WHY_NO_DROP = REASONS.index("no_drop")
+WHY_KEPT_ON = REASONS.index("kept_on")
+WHY_CONTACTS_DISAGREE = REASONS.index("contacts_disagree")
+WHY_HELD_DOWN = REASONS.index("held_down")
+WHY_FORBIDDEN = REASONS.index("forbidden")
+WHY_SETTINGS_COMING = REASONS.index("settings_coming")
+WHY_NO_SETTINGS = REASONS.index("no_settings")
+WHY_BUSY = REASONS.index("busy")
+WHY_NOT_OUT = REASONS.index("not_out")
+WHY_NO_SUCH_THROW = REASONS.index("no_such_throw")
+WHY_OK = REASONS.index("ok")
+WHY_WRONG_COUNT = REASONS.index("wrong_count")
+WHY_WRONG_CRC = REASONS.index("wrong_crc")
+WHY_FLASH = REASONS.index("flash")

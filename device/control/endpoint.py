@@ -4,8 +4,8 @@ from device.control.outbox import Outbox
 from device.control.ticks import Marks
 from shared_protocol.crc import CrcTables
 from shared_protocol.line import GOOD, Decoded, LineDecoder
-from shared_protocol.messages import board_reads
 from shared_protocol.reader import LINE, NOTHING, TEXT, LineReader
+from shared_protocol.registry import board_reads
 
 TYPE_CHECKING = False
 if TYPE_CHECKING:

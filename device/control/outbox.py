@@ -11,6 +11,7 @@ from shared_protocol.messages import ALIVE
 
 KEPT = 48
 PLAIN = 48
+FOR_ANSWERS = 16
 _WIDEST = 12
 
 AGAIN_MS = 1000
@@ -23,6 +24,7 @@ class _Line:
     def __init__(self) -> None:
         self.message = ALIVE
         self.values: "list[object]" = [0] * _WIDEST
+        self.serial = 0
         self.used = False
         self.sent = False
 
@@ -37,6 +39,7 @@ class Outbox:
         self._plain_first = 0
         self._plain_count = 0
         self._number = 0
+        self._serial = 0
         self._writer = LineWriter()
         self._crc = Crc32(tables)
         self._raw = b""
@@ -61,6 +64,8 @@ class Outbox:
             if not line.sent:
                 self._unsent -= 1
         self._number += 1
+        self._serial += 1
+        line.serial = self._serial
         line.message = message
         line.values[0] = self._number
         line.used = True
@@ -70,8 +75,8 @@ class Outbox:
         return line.values
 
     def has_room(self) -> bool:
-        """True if a plain message fits."""
-        return self._plain_count < PLAIN
+        """True if telemetry fits; some room is left for answers."""
+        return self._plain_count < PLAIN - FOR_ANSWERS
 
     def plain(self, message: Message) -> "list[object]":
         """The values to fill of a message that is sent once. When there is no room the newest one is lost."""
@@ -82,6 +87,8 @@ class Outbox:
             self._plain_count -= 1
         line = self._plain[(self._plain_first + self._plain_count) % PLAIN]
         self._plain_count += 1
+        self._serial += 1
+        line.serial = self._serial
         line.message = message
         return line.values
 
@@ -157,26 +164,32 @@ class Outbox:
             self._again.set(0, now_ms)
 
     def _next_line(self) -> bool:
-        """Write the next record into the buffer; False if there is none."""
-        if self._unsent:
-            for step in range(KEPT):
-                line = self._kept[(self._kept_next + step) % KEPT]
-                if line.used and not line.sent:
-                    line.sent = True
-                    self._unsent -= 1
-                    return self._write(line)
-            self._unsent = 0
-        if self._raw:
+        """Write the next record into the buffer, in the order in which they were filled; False if there is none."""
+        kept = self._first_unsent()
+        if self._raw and kept is None:
             self._body = self._raw
             self._length = len(self._raw)
             self._raw = b""
             return True
-        if self._plain_count:
-            line = self._plain[self._plain_first]
+        plain = self._plain[self._plain_first] if self._plain_count else None
+        if kept is not None and (plain is None or kept.serial < plain.serial):
+            kept.sent = True
+            self._unsent -= 1
+            return self._write(kept)
+        if plain is not None:
             self._plain_first = (self._plain_first + 1) % PLAIN
             self._plain_count -= 1
-            return self._write(line)
+            return self._write(plain)
         return False
+
+    def _first_unsent(self) -> "_Line | None":
+        if self._unsent:
+            for step in range(KEPT):
+                line = self._kept[(self._kept_next + step) % KEPT]
+                if line.used and not line.sent:
+                    return line
+            self._unsent = 0
+        return None
 
     def _write(self, line: _Line) -> bool:
         self._body = self._writer.buffer

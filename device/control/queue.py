@@ -242,7 +242,9 @@ class Queue:
             return
         gate = plant.banks[plan.bank]
         self._which = plan.bank
-        if self.throws.earlier_of_junction(throw):
+        if gate.running:
+            self._why = WHY_GAP if self._firing.in_gap(plan.bank, now_ms) else WHY_PULSE_RUNNING
+        elif self.throws.earlier_of_junction(throw):
             self._which = throw.junction
             self._why = WHY_QUEUED_AHEAD
         elif not self._may_make(throw):
@@ -250,8 +252,6 @@ class Queue:
             self._why = WHY_FORBIDDEN
         elif throw.now and self._ahead(throw):
             self._why = WHY_QUEUED_AHEAD
-        elif gate.running:
-            self._why = WHY_GAP if self._firing.in_gap(plan.bank, now_ms) else WHY_PULSE_RUNNING
         elif self._firing.rest_left_ms(throw, now_ms) > 0:
             self._why = WHY_RESTING
         elif not gate.fresh:
@@ -344,7 +344,7 @@ class Queue:
                 place += 1
 
     def _ended(self, throw: Throw, now_ms: int) -> bool:
-        if self._seen_already(throw) and not self.throws.earlier_of_junction(throw):
+        if self._seen_already(throw) and self._its_turn(throw, now_ms) and not self.throws.earlier_of_junction(throw):
             self.throws.finish(throw, DONE, WHY_ALREADY, -1, passed_ms(throw, now_ms))
             return True
         why = self._not_possible(throw.junction, throw.lie)

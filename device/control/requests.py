@@ -4,6 +4,7 @@ from shared_protocol import messages
 from shared_protocol.line import Decoded
 from shared_protocol.settings_table import SETTINGS
 from shared_protocol.words import (
+    REASONS,
     REFUSED,
     SCOPE_ALL,
     WHY_BOARD_RESTARTED,
@@ -16,7 +17,6 @@ from shared_protocol.words import (
     WHY_OK,
     WHY_OPERATOR,
     WHY_SETTINGS_COMING,
-    reason,
 )
 
 TYPE_CHECKING = False
@@ -209,7 +209,7 @@ class Requests:
             values = controller.outbox.plain(messages.REJECTED)
             values[0] = problem.record if problem else -1
             values[1] = problem.field.encode() if problem else b""
-            values[2] = reason(problem.why) if problem else WHY_FLASH
+            values[2] = REASONS.index(problem.why) if problem else WHY_FLASH
             return
         controller.take_settings(found.settings)
         values = controller.outbox.plain(messages.ACCEPTED)

@@ -13,6 +13,7 @@ if TYPE_CHECKING:
 
 _BANKS, _EXPECT, _SECOND = 0, 1, 2
 EXPECT_MS = 500
+EXPECT_SOON_MS = 200
 _NOT_TELLING = -1
 
 
@@ -24,7 +25,8 @@ class Teller:
         self._outbox = outbox
         self._marks = Marks(3)
         self._place = _NOT_TELLING
-        self._lines: "list[bytes]" = []
+        self._no_lines: "list[bytes]" = []
+        self._lines = self._no_lines
         self._line = 0
         self._sending = False
         self.up_s = 0
@@ -70,7 +72,7 @@ class Teller:
                 self._line += 1
             return
         self._sending = False
-        self._lines = []
+        self._lines = self._no_lines
         values = self._outbox.plain(messages.END)
         values[0] = messages.ASK_SETTINGS
 
@@ -85,13 +87,28 @@ class Teller:
         if self._marks.since(_BANKS, now_ms) >= plant.tell_ms:
             self._marks.set(_BANKS, now_ms)
             for number in range(len(plant.banks)):
-                self._tell_bank(plant, number, now_ms)
-            self._tell_state(plant, queue)
-        if queue.throws.count and (queue.throws.changed or self._marks.since(_EXPECT, now_ms) >= EXPECT_MS):
+                if self._fits():
+                    self._tell_bank(plant, number, now_ms)
+            if self._fits():
+                self._tell_state(plant, queue)
+        if queue.throws.count:
+            self._tell_queue(queue, now_ms)
+
+    def _tell_queue(self, queue: Queue, now_ms: int) -> None:
+        since_ms = self._marks.since(_EXPECT, now_ms)
+        if since_ms >= EXPECT_MS or (queue.throws.changed and since_ms >= EXPECT_SOON_MS):
             queue.throws.changed = False
             self._marks.set(_EXPECT, now_ms)
             for place in range(queue.throws.count):
-                self._tell_expect(queue, place, now_ms)
+                if self._fits():
+                    self._tell_expect(queue, place, now_ms)
+
+    def _fits(self) -> bool:
+        """True if there is room for telemetry; counts what is dropped."""
+        if self._outbox.has_room():
+            return True
+        self._outbox.dropped += 1
+        return False
 
     def due_ms(self, plant: "Plant | None", now_ms: int) -> int:
         """How long until telemetry is due."""

@@ -131,11 +131,11 @@ class BankWatch:
             return
         gain_mv = recharge.charged_mv(gate.settings, self._rise_mv, passed_ms) - self._rise_mv
         if gain_mv > 500 and mv - self._rise_mv < gain_mv // 5:
-            self._no_rise(mv)
+            self._no_rise(mv, passed_ms)
         elif passed_ms >= charge.stall_ms:
             self._report(RECHARGE_STALLED, mv, passed_ms)
 
-    def _no_rise(self, mv: int) -> None:
+    def _no_rise(self, mv: int, passed_ms: int) -> None:
         """It does not charge at all: emptied by a coil, or nothing charges it?"""
         fell_mv = self._rise_mv - mv
         full_mv = self._gate.settings.full_mv
@@ -144,7 +144,9 @@ class BankWatch:
         elif not self._after_pulse and full_mv // 64 < mv < full_mv // 3 and fell_mv < mv // 32:
             # Steady at what a coil and the charge resistor divide: a bank left alone would sink through its bleed.
             self._report(HELD_DOWN, mv, self._rise_mv)
-        elif mv > full_mv // 3 and mv > self._rise_mv:
-            self._report(RECHARGE_STALLED, mv, self._gate.settings.charge.stall_ms)
+        elif mv > full_mv // 3 and fell_mv < mv // 32:
+            # Something charges it, or it would have sunk; but it does not get there.
+            if passed_ms >= self._gate.settings.charge.stall_ms:
+                self._report(RECHARGE_STALLED, mv, passed_ms)
         else:
             self._report(SUPPLY_MISSING, mv, self._rise_mv)
