@@ -106,7 +106,10 @@ class Motors:
         self._equal = settings.timing.equal if settings.timing else 1
         self.all = [MotorState(motor) for motor in settings.motors]
         self._seen_by_contact = [motor for motor in self.all if motor.has_contact]
+        # What was pulsed before a restart is not known: every coil rests from the start.
         self._rest = Marks(2 * len(self.all))
+        for coil in range(2 * len(self.all)):
+            self._rest.set(coil, board.ticks_ms())
         self._sampled = Marks(1)
         self._in_1 = -1
         self._in_2 = -1

@@ -8,9 +8,17 @@ from shared_protocol import messages, registry
 
 
 class Bench:
-    """Steps time and ticks; keeps what the board said. `lock` and `unlock` go around every tick."""
+    """Steps time and ticks; keeps what the board said. `before_tick` and `after_tick` go around every tick."""
 
-    def __init__(self, layout: "BenchLayout | None" = None, board: "BenchBoard | None" = None, full: bool = True) -> None:
+    def before_tick(self) -> None:
+        """Nothing; a test on MicroPython locks the heap here."""
+
+    def after_tick(self) -> None:
+        """Nothing; a test on MicroPython unlocks the heap here."""
+
+    def __init__(
+        self, layout: "BenchLayout | None" = None, board: "BenchBoard | None" = None, full: bool = True, rest: bool = True
+    ) -> None:
         self.board = board if board is not None else BenchBoard()
         if layout is not None or 0 not in self.board.slots:
             self.board.slots[0] = (layout if layout is not None else usual()).slot()
@@ -22,13 +30,14 @@ class Bench:
         self.said: "list[Received]" = []
         self.next_id = 1
         self.acknowledge = True
-        self.before_tick = nothing
-        self.after_tick = nothing
         self.on_pulse = nothing_with_pulse
         self._pulses_seen = self.board.pulse_count
         if full:
             for bank in self.board.banks:
                 bank.mv = bank.full_mv
+        if rest:
+            # Coils rest after a start, as nobody knows what was pulsed before it.
+            self.run(510, 5000)
 
     def send(self, name: str, **fields: object) -> None:
         """The host sends one message."""
@@ -111,10 +120,6 @@ class Bench:
             if all([found[key] == where[key] for key in where]):
                 return found
         return None
-
-
-def nothing() -> None:
-    """Around a tick: nothing."""
 
 
 def nothing_with_pulse(pulse: "tuple[int, int, int, int, int]") -> None:

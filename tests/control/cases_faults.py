@@ -23,10 +23,11 @@ def code_of(bench: Bench, scope: str, number: int) -> object:
 
 
 def case_supply_missing_from_the_start() -> None:
-    bench = Bench(None, BenchBoard(), False)
-    for bank in bench.board.banks:
+    board = BenchBoard()
+    for bank in board.banks:
         bank.rise_mv_per_ms = 0
         bank.mv = 30
+    bench = Bench(None, board, False)
     bench.hello()
     bench.keep_alive(3000)
     assert code_of(bench, "bank", 0) == "supply_missing"

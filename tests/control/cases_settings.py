@@ -45,7 +45,7 @@ def case_a_transaction_changes_the_ready_voltage() -> None:
     assert taken is not None and taken["crc"] != before and taken["seq"] == 2
     bench.board.banks[0].full_mv = 15_400
     bench.board.banks[0].mv = 15_400
-    bench.run(50)
+    bench.run(600)
     number = bench.throw(0, 1)
     bench.run(50)
     assert bench.outcome(number)["why"] == "below_ready"  # type: ignore[index]

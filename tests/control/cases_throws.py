@@ -22,6 +22,14 @@ def ready(layout: "BenchLayout | None" = None, mv_0: int = 16_000, mv_1: int = 1
     return bench
 
 
+def case_coils_rest_after_a_restart() -> None:
+    bench = Bench(None, None, True, False)
+    bench.hello()
+    number = bench.throw(0, 1)
+    bench.run(20)
+    assert outcome_of(bench, number) == ("refused", "resting")
+
+
 def case_a_full_bank_fires_at_once() -> None:
     bench = ready()
     number = bench.throw(0, 1)

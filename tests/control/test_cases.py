@@ -30,9 +30,9 @@ import bench
 import {module} as cases
 kept = bench.Bench.__init__
 def locked(self, *args, **more):
-    kept(self, *args, **more)
     self.before_tick = lock
     self.after_tick = unlock
+    kept(self, *args, **more)
 locked_now = [False]
 def lock():
     locked_now[0] = True
