@@ -1,0 +1,1 @@
+"""The simulator: circuit, motors, faults, the virtual board and rehearsals."""
