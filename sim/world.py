@@ -146,8 +146,6 @@ class World:
         self._check_pulse(bank, mask, coils, width_us)
         if not unit.begin(self.now_us, width_us):
             raise InvariantBroken(f"bank {bank}: a pulse was sent while another runs")
-        for motor in {motor for motor, _ in coils}:
-            self.motors[motor].draw_friction(self._rng)
         self.circuit.set_drivers(bank, coils)
         self.pulses.append(PulseRecord(self.now_us, bank, group, mask, width_us, round(self.circuit.bank_v(bank) * 1000)))
 
