@@ -33,9 +33,7 @@ class Inputs:
         self._true = [False] * count
         self._bounces_until_us = [0] * count
         self._words = [0, 0]
-        self._contact_inputs = {
-            number for motor in settings.motors for number in (motor.c1, motor.c2) if number >= 0
-        }
+        self._contact_inputs = {number for motor in settings.motors for number in (motor.c1, motor.c2) if number >= 0}
         self._read_contacts()
         self.update(0)
         self._bounces_until_us = [0] * count

@@ -144,7 +144,9 @@ class HostCalls:
         memory = caller["memory"]
         assert isinstance(memory, wasmtime.Memory)
         if not self._places:
-            return self._first_calls(caller, memory, bytes(memory.read(caller, name, name + name_size)), data, size, result)
+            return self._first_calls(
+                caller, memory, bytes(memory.read(caller, name, name + name_size)), data, size, result
+            )
         if self._fuel is not None:
             left = self._store.get_fuel()
             if self._last_fuel:

@@ -147,7 +147,9 @@ class World:
         if not unit.begin(self.now_us, width_us):
             raise InvariantBroken(f"bank {bank}: a pulse was sent while another runs")
         self.circuit.set_drivers(bank, coils)
-        self.pulses.append(PulseRecord(self.now_us, bank, group, mask, width_us, round(self.circuit.bank_v(bank) * 1000)))
+        self.pulses.append(
+            PulseRecord(self.now_us, bank, group, mask, width_us, round(self.circuit.bank_v(bank) * 1000))
+        )
 
     def _check_pulse(self, bank: int, mask: int, coils: set[tuple[int, int]], width_us: int) -> None:
         unit = self.hardware[bank]

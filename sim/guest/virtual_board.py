@@ -10,10 +10,14 @@ import array
 from device.board.seam import Board
 from sim.guest import exchange as at
 
+TYPE_CHECKING = False
+if TYPE_CHECKING:
+    from typing import BinaryIO
+
 try:
     import gc
 
-    from micropython import heap_lock, heap_unlock
+    from micropython import heap_lock, heap_unlock  # type: ignore[import-not-found,unused-ignore]
 
     ON_MICROPYTHON = True
 except ImportError:
@@ -183,7 +187,7 @@ class FileSlots:
     """Slots as files `slot0.txt` and so on in the root of the board's file system."""
 
     def __init__(self) -> None:
-        self._file = None  # type: ignore[var-annotated]
+        self._file: "BinaryIO | None" = None
 
     def lines(self, slot: int) -> "list[bytes]":
         """The lines of a slot."""
@@ -205,6 +209,7 @@ class FileSlots:
 
     def write(self, line: bytes) -> bool:
         """Append to the slot that is open."""
+        assert self._file is not None
         self._file.write(line + b"\n")
         return True
 
