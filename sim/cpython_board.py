@@ -4,24 +4,26 @@ from device.control.controller import Controller
 from device.main import step
 from sim.engine import Engine, Finished, Restart
 from sim.guest.virtual_board import MemorySlots, VirtualBoard
+from sim.slots import Slots
 
 
 class CPythonBoard:
     """A virtual board whose control runs on CPython. `slots` is its flash: it outlives restarts."""
 
-    def __init__(self, slots: dict[int, list[bytes]]) -> None:
+    def __init__(self, slots: Slots) -> None:
         self.slots = slots
         self.controller: Controller | None = None
 
     def run(self, engine: Engine) -> None:
-        """Run until the engine says that it is finished, or the firmware leaves."""
+        """Run until the engine says that it is finished, or the firmware leaves. Raises what the firmware raises."""
+        engine.read_slots = lambda: self.slots
         try:
             while True:
                 try:
                     self._boot(engine)
                     return
-                except Restart:
-                    engine.restarted()
+                except Restart as restart:
+                    engine.restarted(str(restart))
         except Finished:
             return
 

@@ -23,7 +23,10 @@ _OVER_COUNT = 5
 # Readings closer than this are the same: noise and the divider's steps.
 _SAME_MV = 60
 
-_RISE, _WINDOW, _LOOK = 0, 1, 2
+# Below full, a bank that gains nothing in this time and sinks is not being charged.
+SINK_MS = 500
+
+_RISE, _WINDOW, _LOOK, _SINK = 0, 1, 2, 3
 
 
 class BankWatch:
@@ -32,12 +35,13 @@ class BankWatch:
     def __init__(self, gate: BankGate, faults: FaultBook) -> None:
         self._gate = gate
         self._faults = faults
-        self._marks = Marks(3)
+        self._marks = Marks(4)
         self._tau_ms = charge_time_constant_ms(gate.settings.charge)
         self._begun = False
         self._after_pulse = False
         self._rise_mv = 0
         self._window_mv = 0
+        self._sink_mv = 0
         self._look_mv = -1
         self._peak_mv = 0
         self._reached = False
@@ -77,9 +81,11 @@ class BankWatch:
         self._reached = False
         self._rise_mv = mv
         self._window_mv = mv
+        self._sink_mv = mv
         self._peak_mv = mv
         self._marks.set(_RISE, now_ms)
         self._marks.set(_WINDOW, now_ms)
+        self._marks.set(_SINK, now_ms)
 
     def _report(self, code: int, first: int, second: int) -> bool:
         self._faults.report(SCOPE_BANK, self._gate.number, code, first, second, self._gate.last_junction)
@@ -113,6 +119,16 @@ class BankWatch:
             return self._report(SUPPLY_MISSING, mv, self._peak_mv)
         self._window_mv = mv
         self._marks.set(_WINDOW, now_ms)
+        return self._marks.since(_SINK, now_ms) >= SINK_MS and self._sinks(mv, now_ms)
+
+    def _sinks(self, mv: int, now_ms: int) -> bool:
+        """It should be charging, and sinks through its bleed instead."""
+        settings = self._gate.settings
+        due_mv = recharge.charged_mv(settings, self._sink_mv, SINK_MS) - self._sink_mv
+        if due_mv > settings.full_mv // 16 and self._sink_mv - mv > _SAME_MV:
+            return self._report(SUPPLY_MISSING, mv, self._sink_mv)
+        self._sink_mv = mv
+        self._marks.set(_SINK, now_ms)
         return False
 
     def _rises(self, mv: int, now_ms: int) -> None:

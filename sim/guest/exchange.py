@@ -14,7 +14,7 @@ BANKS_IN = 6
 BANK_IN_WORDS = 5
 LOW_MV, MEAN_MV, LAST_MV, AGE_US, RUNNING = 0, 1, 2, 3, 4
 
-# Board to world. The world sets these to 0 (FOLLOWERS and CHARGE: leaves them) when it has taken them.
+# Board to world. The world sets these to 0 when it has taken them (but leaves DUE_US, FOLLOWERS and CHARGE).
 DUE_US = 24
 TX_COUNT = 25
 FOLLOWERS = 26  # two words
@@ -22,6 +22,12 @@ CHARGE = 28  # bit n: the charge path of bank n is off
 RESET = 29
 FED = 30
 HEAP_USED = 31
+# How many of the bytes that were given have been read.
+RX_TAKEN = 41
+# Settings were put in force; steps of flash writing; whether lines were written in between.
+CONFIGURED = 42
+FLASHED = 43
+WROTE = 44
 BANKS_OUT = 32
 BANK_OUT_WORDS = 3
 GROUP, MASK, WIDTH_US = 0, 1, 2

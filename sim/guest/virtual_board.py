@@ -49,15 +49,14 @@ class VirtualBoard(Board):
         self.uid = uid
         self.boot = boot
         self._slots = slots
-        self._read = 0
 
     def configure(self, settings: object) -> None:
-        """The world has its wiring from the layout file; nothing to do."""
+        """The world takes the settings from the slots when it hears of it; its wiring it has from the layout file."""
+        self.io[at.CONFIGURED] = 1
 
     def before_tick(self, due_us: int) -> None:
         self.io[at.DUE_US] = due_us
         self.exchange()
-        self._read = 0
         heap_lock()
 
     def after_tick(self) -> None:
@@ -112,10 +111,11 @@ class VirtualBoard(Board):
         self.io[at.FOLLOWERS + word] = bits
 
     def read_byte(self) -> int:
-        if self._read >= self.io[at.RX_COUNT]:
+        taken = self.io[at.RX_TAKEN]
+        if taken >= self.io[at.RX_COUNT]:
             return -1
-        self._read += 1
-        return self.rx[self._read - 1]
+        self.io[at.RX_TAKEN] = taken + 1
+        return self.rx[taken]
 
     def write_byte(self, byte: int) -> bool:
         count = self.io[at.TX_COUNT]
@@ -125,23 +125,23 @@ class VirtualBoard(Board):
         self.io[at.TX_COUNT] = count + 1
         return True
 
-    def unread(self) -> int:
-        """Bytes of `rx` that the tick has not taken."""
-        return self.io[at.RX_COUNT] - self._read
-
     def slot_lines(self, slot: int) -> "list[bytes]":
         return self._slots.lines(slot)
 
     def slot_begin(self, slot: int) -> bool:
+        self.io[at.FLASHED] += 1
         return self._slots.begin(slot)
 
     def slot_write(self, line: bytes) -> bool:
+        self.io[at.WROTE] = 1
         return self._slots.write(line)
 
     def slot_end(self) -> bool:
+        self.io[at.FLASHED] += 1
         return self._slots.end()
 
     def slot_append(self, slot: int, line: bytes) -> bool:
+        self.io[at.FLASHED] += 1
         return self._slots.append(slot, line)
 
     def feed_watchdog(self) -> None:
@@ -179,7 +179,7 @@ class MemorySlots:
 
     def append(self, slot: int, line: bytes) -> bool:
         """Append to a closed slot."""
-        self._kept[slot].append(line)
+        self._kept.setdefault(slot, []).append(line)
         return True
 
 

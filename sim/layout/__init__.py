@@ -1,20 +1,20 @@
 """Layout files: TOML that a layout electrician writes, checked whole, turned into settings and a simulated layout."""
 
-from dataclasses import replace
 from pathlib import Path
 
 from shared_protocol.settings import Problem, Settings
 from shared_protocol.settings_check import check
 from shared_protocol.words import REASON_REMEDIES, REASON_TEXTS, REASONS
-from sim.circuit_parameters import BankParameters, SupplyParameters
 from sim.layout.building import LayoutBuilder
-from sim.layout.layout import Layout, MotorPhysics, PhysicsLayout
+from sim.layout.layout import Layout
+from sim.layout.physics import MotorPhysics, PhysicsLayout, physics_of
 from sim.layout.problems import BadFile, FileProblem
-from sim.layout.reading import read_toml
+from sim.layout.reading import Document, read_toml
 from sim.layout.warnings import warnings_of
-from sim.motor import motor_kinds
 
-__all__ = ["BadFile", "FileProblem", "Layout", "MotorPhysics", "PhysicsLayout", "demo_layout_path", "load_layout"]
+__all__ = [
+    "BadFile", "FileProblem", "Layout", "MotorPhysics", "PhysicsLayout", "demo_layout_path", "layout_of", "load_layout",
+]  # fmt: skip
 
 
 def demo_layout_path() -> Path:
@@ -24,7 +24,11 @@ def demo_layout_path() -> Path:
 
 def load_layout(path: Path) -> Layout:
     """Read and check a layout file. Raises BadFile with everything that is wrong, by line."""
-    document = read_toml(path)
+    return layout_of(read_toml(path))
+
+
+def layout_of(document: Document) -> Layout:
+    """Check a layout file that has been read. Raises BadFile with everything that is wrong, by line."""
     builder = LayoutBuilder(document)
     builder.build()
     document.raise_if_wrong()
@@ -32,19 +36,24 @@ def load_layout(path: Path) -> Layout:
     problem: Problem | None = None
     for message, values in builder.records.rows:
         problem = problem or settings.add(message, values)
+    # The board's own check has the last word; the reader has named most of this before, with more detail.
     problem = problem or check(settings)
     if problem is not None:
-        note(builder, problem)
+        _note(builder, problem)
         document.raise_if_wrong()
+    junctions = builder.junctions
     layout = Layout(
-        path, builder.name, builder.records.rows, settings, physics_of(builder), builder.junctions.words,
-        builder.inputs, [], builder.records.origins,
+        path=Path(document.file), name=builder.name, records=builder.records.rows, settings=settings,
+        physics=physics_of(builder.banks, junctions.motors.tables), junction_names=junctions.names.all,
+        junction_words=junctions.words, lie_names=junctions.lie_names, bank_names=builder.banks.names.all,
+        route_names=builder.panel.routes.all, input_names=builder.inputs.numbers, output_names=builder.outputs.numbers,
+        origins=builder.records.origins,
     )  # fmt: skip
-    layout.warnings.extend(warnings_of(layout))
+    layout.warnings.extend(warnings_of(layout, builder.banks, document.data["bank"]))
     return layout
 
 
-def note(builder: LayoutBuilder, problem: Problem) -> None:
+def _note(builder: LayoutBuilder, problem: Problem) -> None:
     """Note what the check of the whole found, in the owner's terms."""
     number = REASONS.index(problem.why)
     remedy = REASON_REMEDIES[number]
@@ -52,29 +61,6 @@ def note(builder: LayoutBuilder, problem: Problem) -> None:
     if problem.record < 0:
         builder.document.wrong((), message)
         return
-    where, owner = builder.records.origins[problem.record]
-    builder.document.wrong((*where, owner.get(problem.field, problem.field)), message)
-
-
-def physics_of(builder: LayoutBuilder) -> PhysicsLayout:
-    """The simulator's half of the layout."""
-    supply = SupplyParameters(builder.full_supply_v(), builder.supply.get("source_ohm", 0.5))
-    banks = []
-    for bank in builder.banks:
-        limit_ma = bank.get("limit_ma", 0)
-        banks.append(
-            BankParameters(
-                capacitance_f=bank.get("capacitance_uf", 4700) * 1e-6,
-                esr_ohm=bank.get("esr_ohm", 0.05),
-                leak_ohm=bank.get("bleed_ohm", 4700.0),
-                charge_ohm=max(0.1, bank.get("charge_ohm", 47.0)),
-                charge_limit_a=limit_ma / 1000 if limit_ma else None,
-            )
-        )
-    kinds = motor_kinds()
-    motors = []
-    for motor in builder.junctions.motors:
-        usual = "self_ending" if motor.get("ends_own_pulse") else "usual"
-        parameters = replace(kinds[motor.get("simulated", usual)], resistance_ohm=motor["ohm"])
-        motors.append(MotorPhysics(parameters, motor.get("starts", "normal")))
-    return PhysicsLayout(supply, banks, motors)
+    where, owner_keys = builder.records.origins[problem.record]
+    key = owner_keys.get(problem.field, "")
+    builder.document.wrong((*where, key) if key else where, message)

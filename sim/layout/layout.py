@@ -8,46 +8,34 @@ from shared_protocol.fields import Message
 from shared_protocol.registry import board_reads
 from shared_protocol.settings import Settings
 from shared_protocol.settings_check import pins_used
-from sim.circuit_parameters import BankParameters, SupplyParameters
-from sim.layout.reading import Where
-from sim.motor import Motor, MotorParameters
-
-
-@dataclass(frozen=True)
-class MotorPhysics:
-    """What the simulator puts in a motor's place, and where it is at first."""
-
-    parameters: MotorParameters
-    starts: str
-
-
-@dataclass(frozen=True)
-class PhysicsLayout:
-    """The simulator's half of a layout: one entry a motor of the settings."""
-
-    supply: SupplyParameters
-    banks: list[BankParameters]
-    motors: list[MotorPhysics]
-
-    def make_motors(self) -> list[Motor]:
-        """Fresh motors, each where it starts."""
-        return [Motor(motor.parameters, "reverse" if motor.starts == "reverse" else "normal") for motor in self.motors]
+from sim.layout.names import no_such, number_named, plain_name
+from sim.layout.physics import PhysicsLayout
+from sim.layout.records import Origin
 
 
 @dataclass
 class Layout:
-    """One board's layout."""
+    """One board's layout.
+
+    The names and `junction_words` are the owner's own, in Unicode; records and settings hold them as a board can
+    keep them: ASCII, with '?' for the rest. `junction_words` and `lie_names` have a list for each junction.
+    `origins`: where in the file each record came from, and the owner's key of each of its fields.
+    """
 
     path: Path
     name: str
     records: list[tuple[Message, list[object]]]
     settings: Settings
     physics: PhysicsLayout
+    junction_names: list[str]
     junction_words: list[list[str]]
+    lie_names: list[list[str]]
+    bank_names: list[str]
+    route_names: list[str]
     input_names: dict[str, int] = field(default_factory=dict)
+    output_names: dict[str, int] = field(default_factory=dict)
     warnings: list[str] = field(default_factory=list)
-    # Where in the file each record came from, and which of the owner's keys each field came from.
-    origins: list[tuple[Where, dict[str, str]]] = field(default_factory=list)
+    origins: list[Origin] = field(default_factory=list)
 
     def record_bodies(self) -> list[bytes]:
         """The records as they go over the wire and into a slot."""
@@ -55,7 +43,7 @@ class Layout:
         return [codec.body(message, values) for message, values in self.records]
 
     def crc(self) -> str:
-        """CRC-32 of the record bodies, as a board tells it."""
+        """CRC-32 of the record bodies, each with its newline, as a board tells it: eight hex digits."""
         return Codec(board_reads()).crc_text(b"".join(body + b"\n" for body in self.record_bodies())).decode()
 
     def slot_lines(self, sequence: int = 1) -> list[bytes]:
@@ -69,33 +57,33 @@ class Layout:
         return pins_used(self.settings)
 
     def junction_number(self, text: str) -> int:
-        """A junction by its name, or its number as people count (from 1). Raises KeyError."""
-        return number_of(text, [junction.name.decode() for junction in self.settings.junctions], "junction")
+        """The number (from 0) of a junction, by its name or its number as people count. Raises KeyError."""
+        return _number_of(text, self.junction_names, "junction")
 
     def route_number(self, text: str) -> int:
-        """A route by name or number. Raises KeyError."""
-        return number_of(text, [route.name.decode() for route in self.settings.routes], "route")
+        """The number (from 0) of a route, by name or number. Raises KeyError."""
+        return _number_of(text, self.route_names, "route")
 
     def bank_number(self, text: str) -> int:
-        """A bank by name or number. Raises KeyError."""
-        return number_of(text, [bank.name.decode() for bank in self.settings.banks], "bank")
+        """The number (from 0) of a bank, by name or number. Raises KeyError."""
+        return _number_of(text, self.bank_names, "bank")
 
     def lie_number(self, junction: int, text: str) -> int:
-        """A lie of a junction by its name or the owner's words. Raises KeyError."""
-        names = [lie.name.decode() for lie in self.settings.junctions[junction].lies]
-        words = self.junction_words[junction]
-        if text in words:
-            return words.index(text)
-        if text in names:
-            return names.index(text)
-        known = ", ".join(dict.fromkeys(names + words))
-        raise KeyError(f"junction {junction + 1} has no lie '{text}'; it has: {known}")
+        """The number (from 0) of a lie of a junction, by the owner's words, its name or number. Raises KeyError."""
+        words, names = self.junction_words[junction], self.lie_names[junction]
+        for known in (words, names, [plain_name(word) for word in words]):
+            if text in known:
+                return known.index(text)
+        number = number_named(text, names)
+        if number < 0:
+            known = list(dict.fromkeys(words + names))
+            raise KeyError(no_such(text, known, f"lie of '{self.junction_names[junction]}'"))
+        return number
 
 
-def number_of(text: str, names: list[str], what: str) -> int:
-    """The number (from 0) of a name, or of a number as people count. Raises KeyError naming what there is."""
-    if text in names:
-        return names.index(text)
-    if text.isdigit() and 1 <= int(text) <= len(names):
-        return int(text) - 1
-    raise KeyError(f"there is no {what} '{text}'; there are: {', '.join(names) or 'none'}")
+def _number_of(text: str, names: list[str], what: str) -> int:
+    for known in (names, [plain_name(name) for name in names]):
+        number = number_named(text, known)
+        if number >= 0:
+            return number
+    raise KeyError(no_such(text, names, what))

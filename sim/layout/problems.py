@@ -2,10 +2,13 @@
 
 from dataclasses import dataclass
 
+# More than this are counted, not listed: nobody mends them one by one.
+MOST_LISTED = 50
+
 
 @dataclass(frozen=True, order=True)
 class FileProblem:
-    """One finding. `line` is 0 where none can be named."""
+    """One finding: the file's name, the line (from 1; 0 where none can be named), the field, what is wrong."""
 
     file: str
     line: int
@@ -17,8 +20,13 @@ class FileProblem:
 
 
 class BadFile(Exception):
-    """A file that can't be used, with all that was found, in the order of its lines."""
+    """A file that can't be used, with what was found, in the order of its lines, each finding once."""
 
     def __init__(self, problems: list[FileProblem]) -> None:
-        self.problems = sorted(problems)
+        found = sorted(set(problems))
+        if len(found) > MOST_LISTED:
+            rest = found[MOST_LISTED:]
+            found = found[:MOST_LISTED]
+            found.append(FileProblem(rest[0].file, rest[0].line, "file", f"and {len(rest)} more problems from here on"))
+        self.problems = found
         super().__init__("\n".join(str(problem) for problem in self.problems))

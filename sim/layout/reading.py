@@ -6,30 +6,37 @@ The same tables make the reference pages, so a page can't say what the reader do
 import difflib
 import re
 import tomllib
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
+from sim.layout.locating import Step, Where, locate
 from sim.layout.problems import BadFile, FileProblem
+
+__all__ = [
+    "REQUIRED", "Document", "Key", "Step", "Where", "check_table", "check_tables", "fault_of", "key_table_markdown",
+    "named", "near_to", "read_toml", "shown",
+]  # fmt: skip
 
 LARGEST_FILE = 1 << 20
 LONGEST_TEXT = 200
 LONGEST_LIST = 1000
 DEEPEST = 12
+LONGEST_SHOWN = 40
 
 REQUIRED = "required"
-Step = str | int
-Where = tuple[Step, ...]
 
 
 @dataclass(frozen=True)
 class Key:
     """One key of a table.
 
-    kind: 'whole', 'number', 'text', 'word', 'yes/no', 'list of whole numbers', 'list of texts', 'table' or 'tables'
-    (a list of tables), 'any'. low, high: range of numbers, or of list lengths. default: REQUIRED, None (left out) or
-    the value. words: what a 'word' may be. sentence: what it is for.
+    kind: 'whole', 'number', 'text', 'word', 'yes/no', 'name or number' (text or a whole number, kept as text),
+    'list of whole numbers', 'list of texts', 'list of names or numbers', 'table', 'tables' (a list of tables), 'any'.
+    low, high: range of numbers, or of the length of texts and lists. default: REQUIRED, None (left out) or the value.
+    words: what a 'word' may be. refused: words that are understood but not taken, each with the sentence that says
+    why. sentence: what it is for.
     """
 
     name: str
@@ -40,16 +47,18 @@ class Key:
     high: float | None = None
     unit: str = ""
     words: tuple[str, ...] = ()
+    refused: tuple[tuple[str, str], ...] = ()
 
 
 @dataclass
 class Document:
-    """A file that has been read: its data, and on which line each key stands."""
+    """A file that has been read: its data, on which line each key stands, and what was found wrong so far."""
 
     file: str
     data: dict[str, Any]
     lines: dict[Where, int]
     problems: list[FileProblem] = field(default_factory=list)
+    _wrong: list[Where] = field(default_factory=list)
 
     def line_of(self, where: Where) -> int:
         """The line of a key, or of the nearest thing around it."""
@@ -59,7 +68,16 @@ class Document:
 
     def wrong(self, where: Where, message: str) -> None:
         """Note a problem."""
-        self.problems.append(FileProblem(self.file, self.line_of(where), named(where), message))
+        self.note(where, FileProblem(self.file, self.line_of(where), named(where), message))
+
+    def note(self, where: Where, problem: FileProblem) -> None:
+        """Note a problem that is told in other words than its place in this document."""
+        self._wrong.append(where)
+        self.problems.append(problem)
+
+    def is_wrong(self, *tables: Where) -> bool:
+        """True if something in one of these tables was found wrong."""
+        return any(where[: len(table)] == table for where in self._wrong for table in tables)
 
     def raise_if_wrong(self) -> None:
         """Raises BadFile if anything was noted."""
@@ -71,151 +89,84 @@ def named(where: Where) -> str:
     """A path as people read it: `junction 3.motors 1.coils` (numbers from 1)."""
     text = ""
     for step in where:
-        text += f" {step + 1}" if isinstance(step, int) else f".{step}" if text else step
+        text += f" {step + 1}" if isinstance(step, int) else f".{shown(step)}" if text else shown(step)
     return text or "file"
+
+
+def shown(value: object) -> str:
+    """A value as it may stand in a message: short, on one line, without control characters."""
+    if isinstance(value, int) and not isinstance(value, bool) and value.bit_length() > 100:
+        return "a huge number"  # text of it might be refused by Python, and helps nobody
+    text = "".join(letter if letter.isprintable() else "?" for letter in str(value)[: LONGEST_SHOWN + 1])
+    return text if len(text) <= LONGEST_SHOWN else text[: LONGEST_SHOWN - 3] + "..."
+
+
+# ---- files
 
 
 def read_toml(path: Path) -> Document:
     """Read a TOML file. Raises BadFile if it can't be read, is too large, not UTF-8 or not TOML."""
     name = str(path)
-    try:
-        if path.stat().st_size > LARGEST_FILE:
-            raise BadFile([FileProblem(name, 0, "file", f"larger than {LARGEST_FILE >> 20} MiB")])
-        text = path.read_bytes().decode("utf-8")
-    except OSError as error:
-        raise BadFile([FileProblem(name, 0, "file", error.strerror or "can't be read")]) from error
-    except UnicodeDecodeError as error:
-        line = path.read_bytes()[: error.start].count(b"\n") + 1
-        raise BadFile([FileProblem(name, line, "file", "is not UTF-8 text")]) from error
+    text = _text_of(path, name)
     try:
         data = tomllib.loads(text)
+        lines = locate(text)
     except tomllib.TOMLDecodeError as error:
         found = re.search(r"at line (\d+)", str(error))
         line = int(found.group(1)) if found else text.count("\n") + 1
-        reason = str(error).split(" (at ")[0]
-        raise BadFile([FileProblem(name, line, "file", f"is not TOML: {reason[0].lower()}{reason[1:]}")]) from error
+        reason = shown_reason(str(error).split(" (at ")[0])
+        raise BadFile([FileProblem(name, line, "file", f"is not TOML: {reason}")]) from error
     except RecursionError as error:
-        raise BadFile([FileProblem(name, 0, "file", "is nested too deeply")]) from error
-    if depth_of(data) > DEEPEST:
-        raise BadFile([FileProblem(name, 0, "file", "is nested too deeply")])
-    return Document(name, data, locate(text))
+        raise BadFile([FileProblem(name, _deepest_line(text), "file", "is nested too deeply")]) from error
+    except ValueError as error:  # Python refuses to read whole numbers of thousands of digits
+        raise BadFile([FileProblem(name, _longest_number_line(text), "file", "holds a huge number")]) from error
+    document = Document(name, data, lines)
+    for key, value in data.items():
+        if depth_of(value) >= DEEPEST:
+            document.wrong((key,), "is nested too deeply")
+    document.raise_if_wrong()
+    return document
+
+
+def _text_of(path: Path, name: str) -> str:
+    try:
+        with path.open("rb") as file:
+            content = file.read(LARGEST_FILE + 1)
+    except (OSError, ValueError) as error:
+        reason = error.strerror if isinstance(error, OSError) and error.strerror else "can't be read"
+        raise BadFile([FileProblem(name, 0, "file", reason)]) from error
+    if len(content) > LARGEST_FILE:
+        raise BadFile([FileProblem(name, 0, "file", f"is larger than {LARGEST_FILE >> 20} MiB")])
+    try:
+        return content.decode("utf-8-sig")
+    except UnicodeDecodeError as error:
+        line = content[: error.start].count(b"\n") + 1
+        raise BadFile([FileProblem(name, line, "file", "is not UTF-8 text")]) from error
+
+
+def shown_reason(reason: str) -> str:
+    """A reason of tomllib as part of a sentence: first letter small, on one line."""
+    text = "".join(letter if letter.isprintable() else "?" for letter in reason[:100])
+    return text[:1].lower() + text[1:]
+
+
+def _deepest_line(text: str) -> int:
+    """The line with the most opening brackets: good enough to find what is nested thousands deep."""
+    rows = text.split("\n")
+    return max(range(len(rows)), key=lambda number: rows[number].count("[") + rows[number].count("{")) + 1
+
+
+def _longest_number_line(text: str) -> int:
+    longest = max(re.finditer(r"\d[\d_]*", text), key=lambda found: len(found.group()), default=None)
+    return text.count("\n", 0, longest.start()) + 1 if longest else 1
 
 
 def depth_of(value: object, so_far: int = 0) -> int:
     """How deeply lists and tables are nested; stops counting beyond DEEPEST."""
-    if so_far > DEEPEST:
+    if so_far >= DEEPEST or not isinstance(value, (dict, list)):
         return so_far
-    if isinstance(value, dict):
-        return max((depth_of(each, so_far + 1) for each in value.values()), default=so_far)
-    if isinstance(value, list):
-        return max((depth_of(each, so_far + 1) for each in value), default=so_far)
-    return so_far
-
-
-_KEY = re.compile(
-    r"""\s*((?:[A-Za-z0-9_-]+|"[^"\n]*"|'[^'\n]*')(?:\s*\.\s*(?:[A-Za-z0-9_-]+|"[^"\n]*"|'[^'\n]*'))*)\s*="""
-)
-_HEAD = re.compile(r"\s*(\[\[?)\s*(.+?)\s*\]\]?\s*(?:#.*)?$")
-_PART = re.compile(r"""[A-Za-z0-9_-]+|"[^"\n]*"|'[^'\n]*'""")
-
-
-def locate(text: str) -> dict[Where, int]:
-    """The line of each table and key of a TOML text that is known to be right.
-
-    Also of each inline table of a list that spreads over lines. What stands in multi-line strings is not mistaken.
-    """
-    lines: dict[Where, int] = {(): 1}
-    counts: dict[Where, int] = {}
-    table: Where = ()
-    rows = text.split("\n")
-    number = 0
-    while number < len(rows):
-        row = rows[number]
-        number += 1
-        head = _HEAD.match(row)
-        if head and not _KEY.match(row):
-            table = _table_of(head.group(1) == "[[", _parts(head.group(2)), counts)
-            lines.setdefault(table, number)
-            continue
-        key = _KEY.match(row)
-        if key:
-            where = table + _parts(key.group(1))
-            for length in range(len(table) + 1, len(where) + 1):
-                lines.setdefault(where[:length], number)
-            number = _skip_value(rows, number, row[key.end() :], where, lines)
-    return lines
-
-
-def _parts(dotted: str) -> Where:
-    return tuple(part.strip("\"'") for part in _PART.findall(dotted))
-
-
-def _table_of(is_list: bool, parts: Where, counts: dict[Where, int]) -> Where:
-    """The path of a table header; `[junction.lie]` means the newest junction."""
-    where: Where = ()
-    for place, part in enumerate(parts):
-        where += (part,)
-        if is_list and place == len(parts) - 1:
-            counts[where] = counts.get(where, -1) + 1
-        if where in counts:
-            where += (counts[where],)
-    return where
-
-
-def _skip_value(rows: list[str], number: int, rest: str, where: Where, lines: dict[Where, int]) -> int:
-    """Pass over a value that may spread over lines; note where the items of a list stand."""
-    depth = 0
-    item = 0
-    while True:
-        place = 0
-        while place < len(rest):
-            for quotes in ('"""', "'''"):
-                if rest.startswith(quotes, place):
-                    number, rest, place = _skip_text(rows, number, rest, place + 3, quotes)
-                    break
-            else:
-                letter = rest[place]
-                if letter in "\"'":
-                    end = _end_of_string(rest, place)
-                    if depth == 1:
-                        lines.setdefault((*where, item), number)
-                    place = end
-                elif letter == "#":
-                    break
-                else:
-                    if letter in "[{":
-                        if depth == 1:
-                            lines.setdefault((*where, item), number)
-                        depth += 1
-                    elif letter in "]}":
-                        depth -= 1
-                    elif letter == "," and depth == 1:
-                        item += 1
-                    place += 1
-        if depth <= 0 or number >= len(rows):
-            return number
-        rest = rows[number]
-        number += 1
-
-
-def _skip_text(rows: list[str], number: int, rest: str, place: int, quotes: str) -> tuple[int, str, int]:
-    while True:
-        end = rest.find(quotes, place)
-        if end >= 0:
-            return number, rest, end + 3
-        if number >= len(rows):
-            return number, "", 0
-        rest = rows[number]
-        number += 1
-        place = 0
-
-
-def _end_of_string(rest: str, place: int) -> int:
-    quote = rest[place]
-    place += 1
-    while place < len(rest) and rest[place] != quote:
-        place += 2 if rest[place] == "\\" and quote == '"' else 1
-    return place + 1
+    inner: Iterable[object] = value.values() if isinstance(value, dict) else value
+    return max((depth_of(each, so_far + 1) for each in inner), default=so_far)
 
 
 # ---- checking against tables of keys
@@ -238,7 +189,7 @@ def check_table(document: Document, where: Where, table: object, keys: tuple[Key
             if message:
                 document.wrong((*where, key.name), message)
             else:
-                values[key.name] = float(value) if key.kind == "number" else value
+                values[key.name] = _kept(key, value)
         elif key.default == REQUIRED:
             document.wrong((*where, key.name), "is missing")
         elif key.default is not None:
@@ -257,68 +208,138 @@ def check_tables(document: Document, where: Where, tables: object, keys: tuple[K
     return [check_table(document, (*where, number), table, keys) for number, table in enumerate(tables)]
 
 
+def near_to(text: str, known: Iterable[str]) -> str:
+    """The known name most like `text`, or nothing."""
+    candidates = [each for each in known if len(each) <= LONGEST_TEXT]
+    if len(text) > LONGEST_TEXT:
+        return ""
+    by_small = {each.casefold(): each for each in candidates}
+    near = difflib.get_close_matches(text.casefold(), by_small, 1)
+    return by_small[near[0]] if near else ""
+
+
 def _unknown(name: str, known: list[str]) -> str:
-    near = difflib.get_close_matches(name, known, 1)
-    return f"is not a key here; did you mean '{near[0]}'?" if near else f"is not a key here; keys: {', '.join(known)}"
+    near = near_to(name, known)
+    return f"is not a key here; did you mean '{near}'?" if near else f"is not a key here; keys: {', '.join(known)}"
+
+
+def _kept(key: Key, value: Any) -> Any:
+    if key.kind == "number":
+        return float(value)
+    if key.kind == "name or number":
+        return str(value)
+    if key.kind == "list of names or numbers":
+        return [str(each) for each in value]
+    return value
 
 
 def fault_of(key: Key, value: object) -> str:
     """What is wrong with a value, or nothing."""
     if key.kind in ("whole", "number"):
         return _number_fault(key, value)
-    if key.kind in ("text", "word"):
-        if not isinstance(value, str):
-            return "must be text in quotes"
-        if key.words and value not in key.words:
-            return f"must be one of: {', '.join(key.words)}"
-        return f"is longer than {LONGEST_TEXT} characters" if len(value) > LONGEST_TEXT else ""
+    if key.kind == "name or number" and _is_small_whole(value):
+        return ""
+    if key.kind in ("text", "word", "name or number"):
+        return _text_fault(key, value)
     if key.kind == "yes/no":
         return "" if isinstance(value, bool) else "must be true or false"
     if key.kind == "table":
-        return "" if isinstance(value, Mapping) else "must be a table"
+        return "" if isinstance(value, Mapping) else f"must be a table: write [{key.name}]"
     if key.kind.startswith("list") or key.kind == "tables":
         return _list_fault(key, value)
+    return ""
+
+
+def _is_small_whole(value: object) -> bool:
+    return isinstance(value, int) and not isinstance(value, bool) and 0 <= value < 1000
+
+
+def _text_fault(key: Key, value: object) -> str:
+    if not isinstance(value, str):
+        return "must be text in quotes"
+    if key.words:
+        for word, sentence in key.refused:
+            if value == word:
+                return sentence
+        return "" if value in key.words else f"must be one of: {', '.join(key.words)}"
+    longest = int(key.high) if key.high is not None else LONGEST_TEXT
+    if len(value) > longest:
+        return f"has {len(value)} characters: at most {longest}"
+    if key.low is not None and len(value) < key.low:
+        return "must not be empty"
+    # Such a letter could move the cursor or change the colour of whatever shows the text.
+    if not all(letter.isprintable() or (letter == "\n" and key.high is None) for letter in value):
+        return "must not hold control characters"
     return ""
 
 
 def _number_fault(key: Key, value: object) -> str:
     whole = key.kind == "whole"
     if isinstance(value, bool) or not isinstance(value, int if whole else (int, float)):
-        return "must be a whole number" if whole else "must be a number"
+        what = "a whole number" if whole else "a number"
+        return f"must be {what}{' of ' + key.unit if key.unit else ''}, without quotes or unit"
     if value != value or value in (float("inf"), float("-inf")):
         return "must be a finite number"
     if (key.low is not None and value < key.low) or (key.high is not None and value > key.high):
-        return f"{value} is outside {key.low:g} to {key.high:g}{' ' + key.unit if key.unit else ''}"
+        return f"{shown(value)} is outside {_span(key)}{' ' + key.unit if key.unit else ''}"
     return ""
 
 
 def _list_fault(key: Key, value: object) -> str:
     if not isinstance(value, list):
-        return "must be a list"
-    if len(value) > (key.high if key.high is not None else LONGEST_LIST):
-        return f"has {len(value)} entries: at most {key.high:g}"
+        return f"must be a list of tables: [[{key.name}]]" if key.kind == "tables" else f"must be a {key.kind}"
+    most = int(key.high) if key.high is not None else LONGEST_LIST
+    if len(value) > most:
+        return f"has {len(value)} entries: at most {most}"
     if key.low is not None and len(value) < key.low:
         return f"has {len(value)} entries: at least {key.low:g}"
-    if key.kind == "list of whole numbers" and any(
-        isinstance(each, bool) or not isinstance(each, int) for each in value
+    if key.kind == "list of whole numbers":
+        if not all(isinstance(each, int) and not isinstance(each, bool) for each in value):
+            return "must hold whole numbers"
+    elif key.kind == "list of texts":
+        if not all(isinstance(each, str) and len(each) <= LONGEST_TEXT for each in value):
+            return "must hold texts in quotes"
+    elif key.kind == "list of names or numbers" and not all(
+        _is_small_whole(each) or (isinstance(each, str) and len(each) <= LONGEST_TEXT) for each in value
     ):
-        return "must hold whole numbers"
-    if key.kind == "list of texts" and not all(isinstance(each, str) and len(each) <= LONGEST_TEXT for each in value):
-        return "must hold texts in quotes"
+        return "must hold names in quotes, or numbers"
     return ""
+
+
+# ---- reference pages
 
 
 def key_table_markdown(keys: tuple[Key, ...]) -> str:
     """A reference table of keys."""
     rows = ["| key | what | kind | range | default |", "| --- | --- | --- | --- | --- |"]
     for key in keys:
-        span = ", ".join(key.words)
-        if key.low is not None and key.high is not None:
-            span = f"{key.low:g} to {key.high:g}"
-        if key.unit:
-            span = f"{span} {key.unit}".strip()
-        default = {REQUIRED: "must be given", "None": ""}.get(str(key.default), str(key.default))
-        if isinstance(key.default, bool):
-            default = str(key.default).lower()
-        rows.append(f"| `{key.name}` | {key.sentence} | {key.kind} | {span} | {default} |")
+        rows.append(f"| `{key.name}` | {key.sentence} | {key.kind} | {_range(key)} | {_default(key)} |")
     return "\n".join(rows) + "\n"
+
+
+def _span(key: Key) -> str:
+    low, high = _figure(key.low), _figure(key.high)
+    return low if low == high else f"{low} to {high}"
+
+
+def _figure(value: float | None) -> str:
+    return "" if value is None else f"{value:,.10g}".replace(",", " ")
+
+
+def _range(key: Key) -> str:
+    if key.words:
+        return ", ".join(f"`{word}`" for word in key.words)
+    if key.low is None or key.high is None:
+        return key.unit
+    unit = {"text": "characters", "tables": "tables", "table": "", "whole": key.unit, "number": key.unit}
+    return f"{_span(key)} {unit.get(key.kind, 'entries')}".strip()
+
+
+def _default(key: Key) -> str:
+    if key.default == REQUIRED:
+        return "must be given"
+    if key.default is None or key.default == [] or key.default == "":
+        return ""
+    if isinstance(key.default, bool):
+        return "true" if key.default else "false"
+    return f"{key.default:g}" if isinstance(key.default, float) else str(key.default)
