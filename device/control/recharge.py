@@ -82,6 +82,9 @@ def drop_mv(bank: BankSettings, coil_cohm: int, from_mv: int, width_us: int) -> 
     tau_us = coil_cohm * bank.charge.cap_uf // 100
     left = exp_4096((width_us << 8) // tau_us if tau_us else 2048)
     held_mv = bank.full_mv * coil_cohm // (coil_cohm + bank.charge.charge_dohm * 10)
+    if bank.charge.kind == table.LIMITED and bank.charge.limit_ma:
+        # A limited source can hold no more on the coil than its current makes there.
+        held_mv = min(held_mv, bank.charge.limit_ma * coil_cohm // 100)
     if from_mv <= held_mv:
         return 0
     return ((from_mv - held_mv) * (4096 - left)) >> 12

@@ -17,7 +17,11 @@ class Bench:
         """Nothing; a test on MicroPython unlocks the heap here."""
 
     def __init__(
-        self, layout: "BenchLayout | None" = None, board: "BenchBoard | None" = None, full: bool = True, rest: bool = True
+        self,
+        layout: "BenchLayout | None" = None,
+        board: "BenchBoard | None" = None,
+        full: bool = True,
+        rest: bool = True,
     ) -> None:
         self.board = board if board is not None else BenchBoard()
         if layout is not None or 0 not in self.board.slots:

@@ -56,7 +56,9 @@ def board_records(layout: BenchLayout, **fields: object) -> None:
             board[key] = fields[key]
     layout.add(table.SET_BOARD, **board)
     layout.add(table.SET_TIMING, **timing)
-    layout.add(table.SET_IO, inputs=[], in_chain=24, in_pins=[17, 18, 19], outputs=[], out_chain=24, out_pins=[20, 21, 22])
+    layout.add(
+        table.SET_IO, inputs=[], in_chain=24, in_pins=[17, 18, 19], outputs=[], out_chain=24, out_pins=[20, 21, 22]
+    )
 
 
 def bank_records(layout: BenchLayout, banks: int = 2, **fields: object) -> None:
@@ -69,7 +71,9 @@ def bank_records(layout: BenchLayout, banks: int = 2, **fields: object) -> None:
         else:
             own[key] = fields[key]
     for number in range(banks):
-        layout.add(table.SET_BANK, i=number, name="bank" + str(number), pin=8 * number, coils=8, chain=[], adc=number, **own)
+        layout.add(
+            table.SET_BANK, i=number, name="bank" + str(number), pin=8 * number, coils=8, chain=[], adc=number, **own
+        )
     for number in range(banks):
         layout.add(table.SET_CHARGE, i=number, cut_pin=-1, **charge)
 

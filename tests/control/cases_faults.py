@@ -174,6 +174,22 @@ def case_a_big_bank_is_judged_by_its_expected_drop() -> None:
     assert bench.outcome(number)["o"] == "done", bench.outcome(number)  # type: ignore[index]
 
 
+def case_a_limited_source_is_no_shorted_coil() -> None:
+    # 300 mA through 4.5 ohm hold 1.35 V at most, whatever little resistance stands in the charge path.
+    layout = BenchLayout()
+    board_records(layout)
+    bank_records(layout, 1, kind="limited", limit_ma=300, charge_dohm=10, cap_uf=2200, guard="fuse")
+    motor_record(layout, 0, 0, 0)
+    junction_records(layout, 0, "turnout", [0], two_lies())
+    board = BenchBoard(1)
+    board.banks[0].drop_percent = 90
+    bench = Bench(layout, board)
+    bench.hello()
+    number = bench.throw(0, 1)
+    bench.run(100)
+    assert bench.outcome(number)["o"] == "done", bench.outcome(number)  # type: ignore[index]
+
+
 def case_sense_out_of_range() -> None:
     bench = resting()
     bench.board.banks[0].sense_mv = 30_000

@@ -18,7 +18,9 @@ def cases_of(module: str) -> list[Callable[[], None]]:
     return [getattr(loaded, name) for name in dir(loaded) if name.startswith("case_")]
 
 
-@pytest.mark.parametrize("case", [case for module in MODULES for case in cases_of(module)], ids=lambda case: case.__name__)
+@pytest.mark.parametrize(
+    "case", [case for module in MODULES for case in cases_of(module)], ids=lambda case: case.__name__
+)
 def test_on_cpython(case: Callable[[], None]) -> None:
     case()
 
