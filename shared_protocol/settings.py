@@ -4,18 +4,27 @@ Attribute names are the field keys of the table. The board runs on these; the ho
 """
 
 from shared_protocol import settings_table as table
-from shared_protocol.fields import Message
+from shared_protocol.fields import INTS, KEEPS_TEXTS, NAME, Message
 
 
 class Record:
     """What all records share: `fill` copies a record's values into attributes of the same names."""
 
-    def fill(self, message: Message, values: "list[object]") -> None:
-        """Take the values of one record (in table order)."""
+    def fill(self, message: Message, values: "list[object]", lists: "list[list[int]]") -> None:
+        """Take the values of one record (in table order). Equal lists are kept once, in `lists`.
+
+        A board leaves the names out: it decides nothing by them, and its slot keeps them for whoever asks.
+        """
         position = 0
         for field in message.fields:
-            setattr(self, field.key, values[position])
+            value = values[position]
             position += 1
+            if field.kind == INTS:
+                if value not in lists:
+                    lists.append(value)  # type: ignore[arg-type]
+                value = lists[lists.index(value)]  # type: ignore[arg-type]
+            if field.kind != NAME or KEEPS_TEXTS:
+                setattr(self, field.key, value)
 
 
 class BoardSettings(Record):
@@ -197,6 +206,7 @@ class Settings:
         self.buttons: "list[ButtonSettings]" = []
         self.followers: "list[FollowerSettings]" = []
         self.count = 0
+        self._lists: "list[list[int]]" = []
         # Number of the record that each object came from, to name it in a problem.
         self.record_of: "dict[int, int]" = {}
         self.charges = 0
@@ -218,7 +228,7 @@ class Settings:
         record = self._make(message)
         if record is None:
             return Problem(number, "m", "not_a_setting")
-        record.fill(message, values)
+        record.fill(message, values, self._lists)
         field = self._place(record)
         if field:
             return Problem(number, field, "twice" if field == "m" else "wrong_place")

@@ -45,7 +45,7 @@ class Controller:
         tables = CrcTables()
         self.outbox = Outbox(tables)
         self.endpoint = Endpoint(board, tables, self.outbox)
-        self.store = SettingsStore(board, tables)
+        self.store = SettingsStore(board, tables, self.endpoint.decoder)
         self.teller = Teller(board, self.outbox)
         self.memory = RequestMemory(self.outbox)
         self.requests = Requests(self)

@@ -27,7 +27,7 @@ class Endpoint:
         self._board = board
         self._outbox = outbox
         self._reader = LineReader(tables)
-        self._decoder = LineDecoder(board_reads())
+        self.decoder = LineDecoder(board_reads())
         self._marks = Marks(1)
         self.line_waiting = False
         self.told_to_leave = False
@@ -63,7 +63,7 @@ class Endpoint:
     def take_line(self, now_ms: int) -> "Decoded | None":
         """Decode the line that waits; None (and counted) if it is not a right message. Allocates."""
         self.line_waiting = False
-        decoded = self._decoder.decode(bytes(self._reader.buffer[: self._reader.length]))
+        decoded = self.decoder.decode(bytes(self._reader.buffer[: self._reader.length]))
         if decoded.fault != GOOD:
             self.bad_lines += 1
             return None

@@ -4,7 +4,7 @@ from device.control.outbox import Outbox
 from shared_protocol import messages
 
 KEPT_REQUESTS = 64
-_FIELDS = 10
+_FIELDS = 9
 
 UNKNOWN_ID, RUNNING, FINISHED, TOO_OLD = 0, 1, 2, 3
 

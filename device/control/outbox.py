@@ -9,10 +9,10 @@ from shared_protocol.fields import Message
 from shared_protocol.line import LineWriter
 from shared_protocol.messages import ALIVE
 
-KEPT = 48
-PLAIN = 48
+KEPT = 40
+PLAIN = 40
 FOR_ANSWERS = 16
-_WIDEST = 12
+_WIDEST = 11
 
 AGAIN_MS = 1000
 _STAR, _NEWLINE = 42, 10

@@ -5,11 +5,9 @@ not count, so power lost at any moment leaves the newest whole set.
 """
 
 from shared_protocol.crc import Crc32, CrcTables
-from shared_protocol.fields import Message
 from shared_protocol.line import GOOD, LineDecoder
 from shared_protocol.settings import Problem, Settings
 from shared_protocol.settings_check import check
-from shared_protocol.settings_table import SETTINGS
 
 TYPE_CHECKING = False
 if TYPE_CHECKING:
@@ -31,13 +29,11 @@ class Slot:
 class SettingsStore:
     """Reads and writes the settings slots of a board. Allocates: not for the steady loop."""
 
-    def __init__(self, board: "Board", tables: CrcTables) -> None:
+    def __init__(self, board: "Board", tables: CrcTables, decoder: LineDecoder) -> None:
         self._board = board
         self._crc = Crc32(tables)
-        records: "dict[str, Message]" = {}
-        for message in SETTINGS:
-            records[message.name] = message
-        self._decoder = LineDecoder(records)
+        # The link's decoder knows the records too: a second one would only cost memory.
+        self._decoder = decoder
         self.slot = 1
         self.sequence = 0
         self.crc = b""
@@ -155,6 +151,8 @@ class SettingsStore:
             number += 1
         found.problem = check(settings)
         if found.problem is None:
+            # Where each record came from was for naming a problem.
+            settings.record_of = {}
             found.settings = settings
 
 
