@@ -22,7 +22,7 @@ from device.control.ticks import elapsed
 from shared_protocol import messages
 from shared_protocol.crc import CrcTables
 from shared_protocol.settings import Settings
-from shared_protocol.words import HELD_DOWN, SCOPE_BANK, WHY_HOST_LOST, WHY_LEAVING
+from shared_protocol.words import HELD_DOWN, REFUSED, SCOPE_BANK, WHY_HOST_LOST, WHY_LEAVING
 
 TYPE_CHECKING = False
 if TYPE_CHECKING:
@@ -65,6 +65,7 @@ class Controller:
         self._reset_after = False
         self._leave_ms = 0
         self._host_there = False
+        self._last_ms = -1
 
     # ---- settings
 
@@ -106,20 +107,22 @@ class Controller:
         board = self.board
         now_ms = board.ticks_ms()
         board.feed_watchdog()
+        # Voltages, queue and link are looked at in every tick; what counts in milliseconds, once in each.
+        new_ms = now_ms != self._last_ms
+        self._last_ms = now_ms
         self.endpoint.read()
-        self.endpoint.sweep(now_ms)
         if self.endpoint.told_to_leave and not self.leaving:
             self.leave(False, now_ms)
         if self.plant is not None:
-            self._tick_plant(self.plant, now_ms)
-        self._watch_host(now_ms)
-        self.teller.bad_lines = self.endpoint.bad_lines
-        self.teller.sweep(now_ms)
+            self._tick_plant(self.plant, new_ms, now_ms)
+        if new_ms:
+            self._watch_host(now_ms)
+            self.endpoint.sweep(now_ms)
+            self.teller.sweep(now_ms)
+            self.teller.bad_lines = self.endpoint.bad_lines
         if self.outbox.open:
-            self.teller.tick(self.plant, self.queue, now_ms)
-            if self.teller.sending_settings:
-                self.teller.send_settings()
-            self.outbox.tick(now_ms)
+            if new_ms or self.teller.telling:
+                self._tell(now_ms)
             self.endpoint.write(self.busy)
         if self.leaving:
             self._go_on_leaving(now_ms)
@@ -127,7 +130,13 @@ class Controller:
         self.due_us = self._due_us(now_ms)
         self.may_collect = self._litter and self.due_us >= COLLECT_IDLE_US
 
-    def _tick_plant(self, plant: Plant, now_ms: int) -> None:
+    def _tell(self, now_ms: int) -> None:
+        self.teller.tick(self.plant, self.queue, now_ms)
+        if self.teller.sending_settings:
+            self.teller.send_settings()
+        self.outbox.tick(now_ms)
+
+    def _tick_plant(self, plant: Plant, new_ms: bool, now_ms: int) -> None:
         queue = self.queue
         firing = self._firing
         contacts = self._contacts
@@ -137,20 +146,21 @@ class Controller:
             return
         for gate in plant.banks:
             gate.update(now_ms)
-        for watch in plant.watches:
-            watch.update(now_ms)
-        self._cut_off(plant)
-        plant.motors.sweep(now_ms)
-        changed = contacts.tick(now_ms)
-        buttons.tick(now_ms, changed, firing.busy)
-        if buttons.wants_stop or buttons.wants_release or buttons.wants_clear:
-            self._board_buttons(buttons, now_ms)
-        self.lies.tick(plant, queue, now_ms, self.leaving)
+        if new_ms:
+            for watch in plant.watches:
+                watch.update(now_ms)
+            self._cut_off(plant)
+            plant.motors.sweep(now_ms)
+            changed = contacts.tick(now_ms)
+            buttons.tick(now_ms, changed, firing.busy)
+            if buttons.wants_stop or buttons.wants_release or buttons.wants_clear:
+                self._board_buttons(buttons, now_ms)
+            self.lies.tick(plant, queue, now_ms, self.leaving)
+            followers.tick(now_ms)
         fired = firing.fired
         queue.tick(now_ms)
         if firing.fired != fired:
             self._litter = True
-        followers.tick(now_ms)
 
     def _board_buttons(self, buttons: Buttons, now_ms: int) -> None:
         if buttons.wants_stop:
@@ -259,19 +269,29 @@ class Controller:
                         cleared = True
         return cleared
 
-    def refuse(self, request: int, junction: int, lie: int, outcome: int, why: int) -> None:
-        """Refuse a throw that the queue never sees."""
+    def refuse(self, request: int, junction: int, lie: int, why: int) -> "list[object]":
+        """Refuse a throw that the queue never sees; returns the values of the outcome."""
         values = self.outbox.kept(messages.OUTCOME)
         values[1] = request
         values[2] = 0
         values[3] = junction
         values[4] = lie
-        values[5] = outcome
+        values[5] = REFUSED
         values[6] = why
-        values[7] = -1
-        values[8] = -1
-        values[9] = -1
-        values[10] = -1
+        for field in range(7, 11):
+            values[field] = -1
+        return values
+
+    def refuse_route(self, request: int, route: int, why: int) -> "list[object]":
+        """Refuse a route that the queue never sees; returns the values of its end."""
+        values = self.outbox.kept(messages.ROUTE_END)
+        values[1] = request
+        values[2] = route
+        values[3] = REFUSED
+        values[4] = why
+        values[5] = 0
+        values[6] = 0
+        return values
 
     def leave(self, reset: bool, now_ms: int) -> None:
         """Finish the running pulse, cancel the queue with outcomes, then leave the loop, or start again."""

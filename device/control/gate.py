@@ -37,6 +37,9 @@ class BankGate:
         self.low_mv = -1
         self.mean_mv = -1
         self.fresh = False
+        # More than the supply can give is no reading to fire by (the watch makes a fault of it when it lasts).
+        self.plausible = True
+        self._most_mv = most_plausible_mv(self.settings)
         self.running = False
         self.charge_on = True
         self._shown_ready = False
@@ -54,6 +57,7 @@ class BankGate:
         self.running = running
         self.low_mv = board.bank_low_mv(self.number)
         self.fresh = self.low_mv >= 0 and not running
+        self.plausible = self.low_mv <= self._most_mv
         if self.fresh:
             self.mean_mv = board.bank_mean_mv(self.number)
             self._marks.set(_SINCE_FRESH, now_ms)
@@ -82,7 +86,7 @@ class BankGate:
 
     def allows(self, ready_mv: int) -> bool:
         """True if fresh samples are at or above `ready_mv` and no pulse or gap runs."""
-        return self.fresh and not self.running and self.low_mv >= ready_mv
+        return self.fresh and self.plausible and not self.running and self.low_mv >= ready_mv
 
     def ms_until(self, ready_mv: int) -> int:
         """Expected time until `allows`, from the last mean; recharge.NEVER if it can't be told."""
@@ -108,6 +112,11 @@ class BankGate:
         if not self.fresh:
             return BANK_SETTLING if self.age_ms(now_ms) < 200 else BANK_STALE
         return BANK_READY if self._shown_ready else BANK_CHARGING
+
+
+def most_plausible_mv(bank: BankSettings) -> int:
+    """The highest reading that the supply could make, with 5 % and 0.3 V for divider and noise."""
+    return bank.peak_mv + bank.peak_mv // 20 + 300
 
 
 def top_ready_mv(settings: Settings, bank: int) -> int:

@@ -2,6 +2,7 @@
 
 from device.control.outbox import Outbox
 from shared_protocol import messages
+from shared_protocol.words import REFUSED, WHY_OLD_ID
 
 KEPT_REQUESTS = 64
 _FIELDS = 9
@@ -29,6 +30,21 @@ class RequestMemory:
         if place < 0:
             return TOO_OLD
         return FINISHED if self._finished[place] else RUNNING
+
+    def repeated(self, number: int) -> bool:
+        """True if the number is not new: its outcome is told again, if it has one; it fires nothing."""
+        state = self.state(number)
+        if state == FINISHED:
+            self.tell(number)
+        elif state == TOO_OLD:
+            values = self._outbox.kept(messages.OUTCOME)
+            values[1] = number
+            values[2] = 0
+            for field in range(3, 11):
+                values[field] = -1
+            values[5] = REFUSED
+            values[6] = WHY_OLD_ID
+        return state != UNKNOWN_ID
 
     def begin(self, number: int, is_route: bool) -> None:
         """A new request is taken up. One that still runs is never forgotten."""

@@ -6,7 +6,7 @@ but the voltage lets others pass.
 
 from device.control import recharge
 from device.control.firing import Firing
-from device.control.memory import FINISHED, RUNNING, TOO_OLD, RequestMemory
+from device.control.memory import RequestMemory
 from device.control.outbox import Outbox
 from device.control.plant import Plant
 from device.control.throws import RouteRun, Throw, Throws, passed_ms
@@ -35,7 +35,6 @@ from shared_protocol.words import (
     WHY_NO_SUCH_ROUTE,
     WHY_NOT_WHILE,
     WHY_OK,
-    WHY_OLD_ID,
     WHY_PULSE_RUNNING,
     WHY_QUEUE_FULL,
     WHY_QUEUED_AHEAD,
@@ -69,7 +68,7 @@ class Queue:
 
     def throw(self, number: int, origin: int, junction: int, lie: int, wait_ms: int, now_ms: int) -> None:
         """Ask for one throw; `number` 0 if it is not the host's. `wait_ms` 0: now or not at all."""
-        if number and self._repeated(number, REFUSED):
+        if number and self._memory.repeated(number):
             return
         if number:
             self._memory.begin(number, False)
@@ -93,7 +92,7 @@ class Queue:
 
     def route(self, number: int, origin: int, route: int, wait_ms: int, now_ms: int) -> None:
         """Ask for a route; `wait_ms` is for each throw, 0: the first throw now, the others as the settings say."""
-        if number and self._repeated(number, REFUSED):
+        if number and self._memory.repeated(number):
             return
         if number:
             self._memory.begin(number, True)
@@ -177,14 +176,6 @@ class Queue:
         self._plant.stopped = True
         self.cancel_waiting(WHY_STOP, False, now_ms)
 
-    def _repeated(self, number: int, outcome: int) -> bool:
-        state = self._memory.state(number)
-        if state == FINISHED:
-            self._memory.tell(number)
-        elif state == TOO_OLD:
-            self.throws.refuse(number, 0, -1, -1, outcome, WHY_OLD_ID, -1, -1, -1)
-        return state == FINISHED or state == RUNNING or state == TOO_OLD
-
     def _not_possible(self, junction: int, lie: int) -> int:
         """Why no such throw can be accepted, WHY_OK if it can; `_which` names what is concerned."""
         self._which = -1
@@ -254,7 +245,7 @@ class Queue:
             self._why = WHY_QUEUED_AHEAD
         elif self._firing.rest_left_ms(throw, now_ms) > 0:
             self._why = WHY_RESTING
-        elif not gate.fresh:
+        elif not gate.fresh or not gate.plausible:
             self._why = WHY_STALE
         elif not gate.allows(plan.ready_mv):
             self._why = WHY_BELOW_READY

@@ -5,7 +5,6 @@ from shared_protocol.line import Decoded
 from shared_protocol.settings_table import SETTINGS
 from shared_protocol.words import (
     REASONS,
-    REFUSED,
     SCOPE_ALL,
     WHY_BOARD_RESTARTED,
     WHY_BUSY,
@@ -105,27 +104,31 @@ class Requests:
         return WHY_OK
 
     def _throw(self, values: "list[object]", now_ms: int) -> None:
+        controller = self._controller
         why = self._cannot(number(values, 0))
         request, junction, lie = number(values, 1), number(values, 2), number(values, 3)
-        queue = self._controller.queue
-        if why != WHY_OK or queue is None:
-            self._controller.refuse(request, junction, lie, REFUSED, why)
-            return
-        queue.throw(request, 0, junction, lie, number(values, 4), now_ms)
+        queue = controller.queue
+        if why == WHY_OK and queue is not None:
+            queue.throw(request, 0, junction, lie, number(values, 4), now_ms)
+        elif why == WHY_BOARD_RESTARTED:
+            # A number of another boot: it says nothing about the numbers of this one.
+            controller.refuse(request, junction, lie, why)
+        elif not controller.memory.repeated(request):
+            controller.memory.begin(request, False)
+            controller.memory.finish(request, controller.refuse(request, junction, lie, why))
 
     def _route(self, values: "list[object]", now_ms: int) -> None:
+        controller = self._controller
         why = self._cannot(number(values, 0))
-        queue = self._controller.queue
-        if why != WHY_OK or queue is None:
-            told = self._controller.outbox.kept(messages.ROUTE_END)
-            told[1] = number(values, 1)
-            told[2] = number(values, 2)
-            told[3] = REFUSED
-            told[4] = why
-            told[5] = 0
-            told[6] = 0
-            return
-        queue.route(number(values, 1), 0, number(values, 2), number(values, 3), now_ms)
+        request, route = number(values, 1), number(values, 2)
+        queue = controller.queue
+        if why == WHY_OK and queue is not None:
+            queue.route(request, 0, route, number(values, 3), now_ms)
+        elif why == WHY_BOARD_RESTARTED:
+            controller.refuse_route(request, route, why)
+        elif not controller.memory.repeated(request):
+            controller.memory.begin(request, True)
+            controller.memory.finish(request, controller.refuse_route(request, route, why))
 
     # ---- the rest needs the right boot number
 

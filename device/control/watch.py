@@ -9,7 +9,7 @@ What is told apart, and by what:
 
 from device.control import recharge
 from device.control.faults import FaultBook
-from device.control.gate import BankGate
+from device.control.gate import BankGate, most_plausible_mv
 from device.control.ticks import LONG_AGO, Marks
 from shared_protocol.settings_check import charge_time_constant_ms
 from shared_protocol.words import HELD_DOWN, RECHARGE_STALLED, SCOPE_BANK, SENSE_RANGE, SUPPLY_MISSING
@@ -37,6 +37,7 @@ class BankWatch:
         self._faults = faults
         self._marks = Marks(4)
         self._tau_ms = charge_time_constant_ms(gate.settings.charge)
+        self._most_mv = most_plausible_mv(gate.settings)
         self._begun = False
         self._after_pulse = False
         self._rise_mv = 0
@@ -93,7 +94,7 @@ class BankWatch:
 
     def _impossible(self, mv: int, now_ms: int) -> bool:
         settings = self._gate.settings
-        if mv > settings.peak_mv + settings.peak_mv // 20 + 300:
+        if mv > self._most_mv:
             self._over += 1
             if self._over >= _OVER_COUNT:
                 return self._report(SENSE_RANGE, mv, settings.peak_mv)

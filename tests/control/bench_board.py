@@ -105,6 +105,10 @@ class BenchBoard(Board):
             self._incoming[self._in_to] = byte
             self._in_to += 1
 
+    def unread(self) -> int:
+        """How many bytes the board has not read yet."""
+        return self._in_to - self._in_from
+
     def heard(self) -> bytes:
         """What the board has sent since the last call."""
         found = bytes(self._outgoing[: self.out_count])

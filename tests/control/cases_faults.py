@@ -196,6 +196,11 @@ def case_sense_out_of_range() -> None:
     bench.keep_alive(200)
     found = bench.last("fault")
     assert found is not None and (found["code"], found["e1"], found["e2"]) == ("sense_range", 30_000, 17_000)
+    bench.send("clear", scope="bank", i=0)
+    early = bench.throw(0, 1)
+    bench.run(6)
+    assert bench.outcome(early)["why"] in ("stale", "bank_out"), "a reading that can't be fires nothing"  # type: ignore[index]
+    bench.run(100)
     number = bench.throw(0, 1)
     bench.run(20)
     assert bench.outcome(number)["why"] == "bank_out"  # type: ignore[index]

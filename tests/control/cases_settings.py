@@ -149,6 +149,24 @@ def case_no_throw_while_settings_arrive() -> None:
     assert bench.outcome(number)["o"] == "done"  # type: ignore[index]
 
 
+def case_a_repeated_id_keeps_its_outcome_while_settings_arrive() -> None:
+    bench = connected()
+    done = bench.throw(0, 1)
+    bench.keep_alive(1000)
+    bench.send("stage", n=10)
+    refused = bench.throw(1, 1)
+    bench.send("throw", id=done, j=0, lie=1, wait=0)
+    bench.run(50)
+    bench.send("abandon")
+    bench.run(20)
+    bench.send("throw", id=refused, j=1, lie=1, wait=0)
+    bench.run(200)
+    for number, expected in ((done, "done"), (refused, "refused")):
+        told = [found["o"] for found in bench.all("outcome") if found["id"] == number]
+        assert told == [expected, expected], told
+    assert len(bench.board.pulses) == 1
+
+
 def case_a_lost_host_drops_the_transaction() -> None:
     bench = connected()
     bench.send("stage", n=10)
