@@ -1,0 +1,36 @@
+"""The go line: can I go? A word first, then the sentence; it can be read without colour."""
+
+from host.model import LayoutModel
+from host.terminal.rows import fit
+from host.views import GoLine
+
+# The word and sign before the sentence.
+SIGNS = {"go": "GO", "wait": "WAIT", "stop": "STOP", "out": "OUT", "lost": "LOST"}
+_FRAMES = {"go": ">> {} <<", "wait": ".. {} ..", "stop": "## {} ##", "out": "!! {} !!", "lost": "?? {} ??"}
+
+
+def go_text(line: GoLine, width: int) -> str:
+    """The whole line: sign, word, sentence."""
+    frame = _FRAMES.get(line.level, "{}").format(SIGNS.get(line.level, line.level.upper()))
+    return fit(f" {frame:<11}{_sentence(line)}", width)
+
+
+def _sentence(line: GoLine) -> str:
+    """The sentence without the word that the sign has said already."""
+    text = line.text
+    for said in ("wait: ", "wait ", "stopped: ", "lost: "):
+        if text.startswith(said):
+            return text[len(said) :]
+    return "ready: every bank is full enough for every throw" if text == "ready" else text
+
+
+def title_text(model: LayoutModel) -> str:
+    """Which layout, whether board and file agree, which board."""
+    name = "no layout"
+    if model.settings is not None and model.settings.board is not None:
+        name = model.settings.board.name.decode() or "layout without a name"
+    if model.connection.state == "lost":
+        return f"{name}, as last told"
+    if model.settings_match is False:
+        return f"{name}, board and file differ"
+    return f"{name}, {model.board.kind} board" if model.board is not None else name
