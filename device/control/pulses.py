@@ -43,8 +43,9 @@ class AllowedPulses:
     def _allow(self, group: int, mask: int, longest_us: int) -> None:
         key = (group << GROUP_COILS) | mask
         if key in self._keys:
+            # Several lies of a junction may use one coil, each with a pulse of its own.
             place = self._keys.index(key)
-            if longest_us < self._longest_us[place]:
+            if longest_us > self._longest_us[place]:
                 self._longest_us[place] = longest_us
         else:
             self._keys.append(key)

@@ -236,6 +236,21 @@ def case_a_three_way_avoids_its_forbidden_combination() -> None:
         assert now != 3, bench.board.pulses
 
 
+def case_lies_of_one_junction_may_have_pulses_of_their_own() -> None:
+    layout = usual()
+    for message, fields in layout.records:
+        if message.name == "set_lie" and fields["j"] == 4:
+            fields["pulse_us"] = (40_000, 30_000, 20_000)[int(fields["i"])]  # type: ignore[call-overload]
+            fields["full_us"] = fields["pulse_us"]
+    bench = ready(layout)
+    for lie in (0, 1, 2):
+        bench.board.banks[0].full_mv = 16_000
+        number = bench.throw(4, lie, 5000)
+        bench.keep_alive(2500)
+        assert outcome_of(bench, number) == ("done", "sent")
+    assert [pulse[3] for pulse in bench.board.pulses] == [40_000, 40_000, 30_000, 30_000, 20_000, 20_000]
+
+
 def case_the_pulse_shortens_towards_full_bank() -> None:
     layout = usual()
     for message, fields in layout.records:
