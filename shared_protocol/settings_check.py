@@ -146,14 +146,16 @@ def shorted_driver_mw(bank: BankSettings, coil_cohm: int) -> "tuple[int, int]":
     """What a driver failed short does: power in the coil and in the charge resistor, in milliwatts (Ohm's law)."""
     charge = bank.charge
     loop_dohm = charge.charge_dohm + coil_cohm // 10
-    current_ma = bank.peak_mv * 10 // max(1, loop_dohm)
-    if charge.limit_ma and charge.limit_ma < current_ma:
+    # Rounded up throughout: what is hot must not be called cool.
+    current_ma = bank.peak_mv * 10 // max(1, loop_dohm) + 1
+    if charge.kind == table.LIMITED and charge.limit_ma and charge.limit_ma < current_ma:
         current_ma = charge.limit_ma
     if current_ma > CURRENT_LIMIT_MA:
         current_ma = CURRENT_LIMIT_MA
-    mw_per_ohm = current_ma * current_ma // 1000
+    mw_per_ohm = (current_ma * current_ma + 999) // 1000
     coil_mw = mw_per_ohm * (coil_cohm // 10) // 10
-    resistor_mw = mw_per_ohm // 10 * charge.charge_dohm
+    # Stays below 2**30: the current falls as the resistance rises (40 V at most).
+    resistor_mw = mw_per_ohm * charge.charge_dohm // 10
     return coil_mw, resistor_mw
 
 

@@ -138,6 +138,8 @@ class BankBuilder:
             return
         if bank["charge"] == "limited" and not bank["limit_ma"]:
             self._document.wrong((*where, "limit_ma"), "is missing: a limited source needs it")
+        if bank["limit_ma"] and bank["charge"] != "limited":
+            self._document.wrong((*where, "limit_ma"), "belongs to charge = \"limited\"")
         if bank["guard"] == "cutoff" and "cut_off_pin" not in bank:
             self._document.wrong((*where, "cut_off_pin"), "is missing: guard = \"cutoff\" needs it")
         if "cut_off_pin" in bank and bank["guard"] != "cutoff" and bank["charge"] != "switched":

@@ -30,8 +30,6 @@ class MotorBuilder:
         """Take the motors of one junction; returns their numbers."""
         where: Where = ("junction", junction)
         motors = check_tables(self._document, (*where, "motors"), table.get("motors", []), keys.MOTOR)
-        if len(self.tables) <= wire.MOST_MOTORS < len(self.tables) + len(motors):
-            self._document.wrong((*where, "motors"), f"more than {wire.MOST_MOTORS} motors: use a second board")
         numbers = []
         usual_bank = self._banks.names.find((*where, "bank"), table["bank"]) if "bank" in table else -1
         for place, motor in enumerate(motors):

@@ -24,8 +24,12 @@ LONGEST_TEXT = 200
 LONGEST_LIST = 1000
 DEEPEST = 12
 LONGEST_SHOWN = 40
+MOST_UNKNOWN = 10
 
 REQUIRED = "required"
+
+# A key of very many parts costs tomllib the square of their number in time and memory: such text never reaches it.
+_DEEP_KEY = re.compile(r"""(?<![A-Za-z0-9_-])(?:(?:[A-Za-z0-9_-]++|"[^"\n]*+"|'[^'\n]*+')[ \t]*+\.[ \t]*+){50}""")
 
 
 @dataclass(frozen=True)
@@ -108,6 +112,10 @@ def read_toml(path: Path) -> Document:
     """Read a TOML file. Raises BadFile if it can't be read, is too large, not UTF-8 or not TOML."""
     name = str(path)
     text = _text_of(path, name)
+    deep = _DEEP_KEY.search(text)
+    if deep:
+        line = text.count("\n", 0, deep.start()) + 1
+        raise BadFile([FileProblem(name, line, "file", "is nested too deeply")])
     try:
         data = tomllib.loads(text)
         lines = locate(text)
@@ -177,10 +185,7 @@ def check_table(document: Document, where: Where, table: object, keys: tuple[Key
     if not isinstance(table, dict):
         document.wrong(where, "must be a table")
         return {}
-    known = {key.name: key for key in keys}
-    for name in table:
-        if name not in known:
-            document.wrong((*where, name), _unknown(name, list(known)))
+    _note_unknown(document, where, table, [key.name for key in keys])
     values: dict[str, Any] = {}
     for key in keys:
         if key.name in table:
@@ -218,9 +223,16 @@ def near_to(text: str, known: Iterable[str]) -> str:
     return by_small[near[0]] if near else ""
 
 
-def _unknown(name: str, known: list[str]) -> str:
-    near = near_to(name, known)
-    return f"is not a key here; did you mean '{near}'?" if near else f"is not a key here; keys: {', '.join(known)}"
+def _note_unknown(document: Document, where: Where, table: dict[str, Any], known: list[str]) -> None:
+    """Note the keys that are not known here: the first of them one by one, the rest as a number."""
+    unknown = [name for name in table if name not in known]
+    for name in unknown[:MOST_UNKNOWN]:
+        near = near_to(name, known)
+        hint = f"did you mean '{near}'?" if near else f"keys: {', '.join(known)}"
+        document.wrong((*where, name), f"is not a key here; {hint}")
+    if len(unknown) > MOST_UNKNOWN:
+        more = len(unknown) - MOST_UNKNOWN
+        document.wrong((*where, unknown[MOST_UNKNOWN]), f"is not a key here, nor are {more - 1} more of this table")
 
 
 def _kept(key: Key, value: Any) -> Any:

@@ -54,6 +54,10 @@ class Terminals:
     def _places(self, named: object) -> dict[str, tuple[str, int]]:
         """What each name says about its place: a number as it is, 'pin 5' or 'chain 3'."""
         found: dict[str, tuple[str, int]] = {}
+        if isinstance(named, dict) and len(named) > self._most:
+            self._document.wrong((self._table,), f"has {len(named)} names: at most {self._most}")
+            self._complete = False
+            return found
         for name, value in named.items() if isinstance(named, dict) else ():
             where = (self._table, name)
             place = _PLACE.fullmatch(value) if isinstance(value, str) else None

@@ -116,6 +116,15 @@ def case_wrong_settings_are_rejected_by_the_board_itself() -> None:
     refused(changed("set_lie", 9, order=[0, 1]), "order", "forbidden_in_passing")
 
 
+def case_a_resistor_too_small_for_a_stuck_driver_is_refused() -> None:
+    # 17 V through 47 + 4.5 ohm: 5.1 W in the resistor (Ohm's law); a limit that no limited source makes changes nothing.
+    refused(changed("set_charge", 0, rated_mw=5000), "guard", "stuck_driver_burns")
+    refused(changed("set_charge", 0, charge_dohm=100, rated_mw=100_000, limit_ma=50), "guard", "stuck_driver_burns")
+    bench = connected()
+    send_settings(bench, changed("set_charge", 0, rated_mw=5200))
+    assert bench.last("accepted") is not None
+
+
 def case_a_count_or_a_sum_that_is_wrong_changes_nothing() -> None:
     for count, crc, why in ((50, b"", "wrong_count"), (-1, b"00000000", "wrong_crc")):
         bench = connected()
