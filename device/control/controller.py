@@ -126,7 +126,7 @@ class Controller:
             self.endpoint.write(self.busy)
         if self.leaving:
             self._go_on_leaving(now_ms)
-        self.has_work = self.endpoint.line_waiting or self.lies.wants_work
+        self.has_work = self.endpoint.line_waiting or self.lies.wants_work or self._staging_disturbed
         self.due_us = self._due_us(now_ms)
         self.may_collect = self._litter and self.due_us >= COLLECT_IDLE_US
 
@@ -158,6 +158,7 @@ class Controller:
             self.lies.tick(plant, queue, now_ms, self.leaving)
             followers.tick(now_ms)
         fired = firing.fired
+        queue.held = self.store.staging
         queue.tick(now_ms)
         if firing.fired != fired:
             self._litter = True
@@ -217,6 +218,8 @@ class Controller:
         self._litter = True
         if self.store.staging_lost:
             self.store.abandon()
+        if self._staging_disturbed:
+            self.requests.give_way()
         if self.endpoint.line_waiting:
             decoded = self.endpoint.take_line(now_ms)
             if decoded is not None:
@@ -225,6 +228,11 @@ class Controller:
         if self.lies.wants_work and self.plant is not None:
             self.lies.work(self.plant, now_ms)
         self.has_work = False
+
+    @property
+    def _staging_disturbed(self) -> bool:
+        """True if somebody asked at the panel for a throw while settings arrive: flash can't be written meanwhile."""
+        return self.store.staging and self.busy
 
     def collected(self) -> None:
         """The loop has collected garbage."""

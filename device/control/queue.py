@@ -63,6 +63,8 @@ class Queue:
         self._why = WHY_OK
         self._which = -1
         self._banks = list(range(len(plant.banks)))
+        # True while settings are being written to flash: nothing fires until that is over.
+        self.held = False
 
     # ---- requests
 
@@ -320,7 +322,7 @@ class Queue:
         run = self.throws.failed_run()
         if run is not None:
             self.throws.cancel_route(run, WHY_ROUTE_FAILED, now_ms)
-        if not self._plant.stopped:
+        if not self._plant.stopped and not self.held:
             self._arrange_banks()
             for bank in self._banks:
                 if not self._plant.banks[bank].running:

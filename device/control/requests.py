@@ -190,6 +190,11 @@ class Requests:
                 why = WHY_FLASH
         self._answer(messages.TO_STAGE, why, count)
 
+    def give_way(self) -> None:
+        """A throw asked for at the panel comes before settings that are arriving: they are dropped."""
+        self._controller.store.abandon()
+        self._answer(messages.TO_STAGE, WHY_BUSY, -1)
+
     def _record(self, body: bytes) -> None:
         """A record outside a transaction is of no use to anybody: it is left unread."""
         store = self._controller.store

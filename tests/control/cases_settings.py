@@ -158,6 +158,19 @@ def case_no_throw_while_settings_arrive() -> None:
     assert bench.outcome(number)["o"] == "done"  # type: ignore[index]
 
 
+def case_a_button_comes_before_settings_that_arrive() -> None:
+    bench = connected()
+    bench.send("stage", n=10)
+    bench.run(20)
+    bench.board.set_input(10, True)
+    bench.run(100)
+    assert len(bench.board.pulses) == 1 and not bench.controller.store.staging
+    assert bench.last("answer") == {"to": "stage", "ok": 0, "why": "busy", "i": -1}
+    bench.send("commit", crc="00000000")
+    bench.run(100)
+    assert bench.last("answer")["to"] == "commit" and bench.controller.store.sequence == 1  # type: ignore[index]
+
+
 def case_a_repeated_id_keeps_its_outcome_while_settings_arrive() -> None:
     bench = connected()
     done = bench.throw(0, 1)
