@@ -2,9 +2,10 @@
 
 from bench_board import BenchBoard
 from bench_layouts import BenchLayout, usual
+
 from device.control.controller import Controller
-from shared_protocol.codec import Codec, Received, plain, values_from
 from shared_protocol import messages, registry
+from shared_protocol.codec import Codec, Received, plain, values_from
 
 
 class Bench:

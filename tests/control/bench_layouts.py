@@ -1,11 +1,11 @@
 """Settings for tests of control: made from plain dictionaries, checked as a board would."""
 
+from shared_protocol import settings_table as table
 from shared_protocol.codec import Codec, values_from
 from shared_protocol.fields import Message
 from shared_protocol.registry import board_reads
 from shared_protocol.settings import Settings
 from shared_protocol.settings_check import check
-from shared_protocol import settings_table as table
 
 
 class BenchLayout:
@@ -109,7 +109,7 @@ def two_lies(**fields: object) -> "list[dict[str, object]]":
 
 
 def usual(**fields: object) -> BenchLayout:
-    """Two banks; turnouts 0 and 1 on bank 0, turnout 2 (with a contact on input 0) on bank 1, crossover 3, three-way 4."""
+    """Two banks; turnouts 0, 1 on bank 0, turnout 2 (contact on input 0) on bank 1, crossover 3, three-way 4."""
     layout = BenchLayout()
     board_records(layout, **fields)
     bank_records(layout)

@@ -1,4 +1,4 @@
-"""Faults: each told by millivolts, times and inputs only; the first is kept; what is out fires nothing until cleared."""
+"""Faults: told by millivolts, times and inputs only; the first is kept; what is out fires nothing until cleared."""
 
 from bench import Bench
 from bench_board import BenchBoard
@@ -361,7 +361,7 @@ def case_a_contact_decides_for_a_motor_that_ends_its_pulse() -> None:
 
 
 def pair(contact: str) -> Bench:
-    """A crossover whose motors have contacts on inputs 0 and 1, on a bank where a short pulse tells one coil from two."""
+    """A crossover with contacts on inputs 0 and 1, on a bank where a short pulse tells one coil from two."""
     layout = BenchLayout()
     board_records(layout)
     bank_records(layout, 1, cap_uf=10_000)

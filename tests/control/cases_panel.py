@@ -3,6 +3,7 @@
 from bench import Bench
 from bench_board import BenchBoard
 from bench_layouts import BenchLayout, bank_records, board_records, junction_records, motor_record, two_lies, usual
+
 from shared_protocol import settings_table as table
 
 PRESS = 10

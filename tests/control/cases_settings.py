@@ -3,6 +3,7 @@
 from bench import Bench
 from bench_board import BenchBoard
 from bench_layouts import BenchLayout, usual
+
 from shared_protocol.codec import Codec
 from shared_protocol.registry import board_reads
 
@@ -117,7 +118,7 @@ def case_wrong_settings_are_rejected_by_the_board_itself() -> None:
 
 
 def case_a_resistor_too_small_for_a_stuck_driver_is_refused() -> None:
-    # 17 V through 47 + 4.5 ohm: 5.1 W in the resistor (Ohm's law); a limit that no limited source makes changes nothing.
+    # 17 V through 47 + 4.5 ohm: 5.1 W in the resistor (Ohm's law); a limit without a limited source is none.
     refused(changed("set_charge", 0, rated_mw=5000), "guard", "stuck_driver_burns")
     refused(changed("set_charge", 0, charge_dohm=100, rated_mw=100_000, limit_ma=50), "guard", "stuck_driver_burns")
     bench = connected()

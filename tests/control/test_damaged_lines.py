@@ -1,4 +1,4 @@
-"""100,000 damaged lines into the endpoint of a running controller: no wrong action, no exception, and it still answers."""
+"""100,000 damaged lines into a running controller: no wrong action, no exception, and it still answers."""
 
 import random
 

@@ -12,7 +12,7 @@ from hypothesis.stateful import RuleBasedStateMachine, initialize, invariant, pr
 
 JUNCTIONS = 5
 LIES = (2, 2, 2, 2, 3)
-# Which (junction, lie) may use which mask on which bank, with the lowest ready voltage for it; and whose coils they are.
+# Which mask may be used on which bank, with the lowest ready voltage for it.
 ALLOWED = {
     (0, 0b1): 12_000, (0, 0b10): 12_000, (0, 0b100): 12_000, (0, 0b1000): 12_000,
     (0, 0b10000): 12_000, (0, 0b100000): 12_000, (0, 0b1000000): 12_000, (0, 0b10000000): 12_000,

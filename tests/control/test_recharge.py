@@ -96,7 +96,8 @@ class Watched(int):
 
 
 @given(
-    st.integers(100, 47_000), st.integers(1, 10_000), st.integers(3000, 33_000), st.sampled_from([(0, 0), (2, 1), (2, 5000)]),
+    st.integers(100, 47_000), st.integers(1, 10_000), st.integers(3000, 33_000),
+    st.sampled_from([(0, 0), (2, 1), (2, 5000)]),
     st.integers(0, 40_000), st.integers(1000, 33_000), st.integers(25, 4000), st.integers(3000, 65_000),
     st.integers(0, 3_600_000),
 )  # fmt: skip

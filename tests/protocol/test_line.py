@@ -77,8 +77,8 @@ def test_names_are_not_shared() -> None:
 
 THROW = b'{"m":"throw","boot":1,"id":2,"j":3,"lie":0,"wait":0}'
 
-# Bodies that some JSON parser takes, or that say what the table does not allow. RFC 8259 (from memory) makes most of them
-# no JSON at all; the names follow the classes of the public JSON parsing test suites (missing, extra, numbers, structure).
+# Bodies that some JSON parser takes, or that say what the table does not allow. RFC 8259 (from memory) makes most of
+# them no JSON at all; the names follow the classes of public JSON parsing suites (missing, extra, numbers, structure).
 NOT_TAKEN = [
     ("trailing comma", b'{"m":"throw","boot":1,"id":2,"j":3,"lie":0,"wait":0,}'),
     ("missing comma", b'{"m":"throw","boot":1,"id":2,"j":3 "lie":0,"wait":0}'),

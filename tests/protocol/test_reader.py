@@ -93,7 +93,7 @@ def test_100_000_damaged_lines_give_no_wrong_message() -> None:
     sent = [(message, values, writer.encode(message, values)) for message, values in lines]
     reader = Codec(board_reads())
     for _ in range(100_000):
-        message, values, line = rng.choice(sent)
+        _, _, line = rng.choice(sent)
         broken = damaged(line, rng)
         for received in reader.feed(broken + b"\n"):
             if received.message is not None:
