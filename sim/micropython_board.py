@@ -130,6 +130,10 @@ class MicroPythonBoard:
         start = self._linked(store, calls).exports(store)["_start"]
         assert isinstance(start, wasmtime.Func)
         engine.begin()
+        self._run(start, store, calls)
+
+    def _run(self, start: wasmtime.Func, store: wasmtime.Store, calls: "HostCalls") -> None:
+        """Run one boot to its end, and give its memory back at once."""
         try:
             start(store)
         except wasmtime.ExitTrap as trap:
@@ -142,6 +146,8 @@ class MicroPythonBoard:
                 raise GuestStalled(f"the firmware did not come back from a step\n{self._printed()}") from trap
             self.cut_happened = True
             raise Restart("the power failed") from trap
+        finally:
+            store.close()
 
     def _linked(self, store: wasmtime.Store, calls: "HostCalls") -> wasmtime.Instance:
         wasi = wasmtime.WasiConfig()

@@ -34,27 +34,37 @@ class SocketScript:
         self._stop = stop
         self._lock = threading.Lock()
         self._client: socket.socket | None = None
+        # A client that has just come, until the board's thread takes it over.
+        self._new: socket.socket | None = None
         self._in = b""
         self._out = b""
         self._deeds: queue.SimpleQueue[Callable[[], None]] = queue.SimpleQueue()
         self.attached = threading.Event()
 
     def attach(self, client: socket.socket) -> None:
-        """A client has connected."""
+        """A client has connected (called from the listening thread)."""
         with self._lock:
-            self._client = client
-            self._in = b""
-            self._out = b""
+            self._new = client
         self.attached.set()
 
     def detach(self) -> None:
         """The client is gone."""
         with self._lock:
-            if self._client is not None:
-                with contextlib.suppress(OSError):
-                    self._client.close()
+            for client in (self._client, self._new):
+                if client is not None:
+                    with contextlib.suppress(OSError):
+                        client.close()
             self._client = None
-        self.attached.clear()
+            self._new = None
+            self.attached.clear()
+
+    def _take_over(self) -> None:
+        """A new client finds an empty line: what was said to nobody is gone."""
+        with self._lock:
+            if self._new is not None:
+                self._client, self._new = self._new, None
+                self._in = b""
+                self._out = b""
 
     def inject(self, deed: Callable[[], None]) -> None:
         """Have something done to the world between two ticks: a fault, a hand."""
@@ -89,8 +99,8 @@ class SocketScript:
             except queue.Empty:
                 break
             deed()
-        with self._lock:
-            client = self._client
+        self._take_over()
+        client = self._client
         if client is not None and not self._transfer(client):
             self.detach()
 
@@ -118,11 +128,15 @@ class SocketScript:
 
 
 class Pace:
-    """Holds virtual time to real time while a client is attached; time stands still while none is."""
+    """Holds virtual time to real time while a client is attached; time stands still while none is.
 
-    def __init__(self, script: SocketScript, stop: threading.Event) -> None:
+    real: False lets time run as fast as it can while a client is attached.
+    """
+
+    def __init__(self, script: SocketScript, stop: threading.Event, real: bool = True) -> None:
         self._script = script
         self._stop = stop
+        self._real = real
         self._due_s = time.monotonic()
 
     def __call__(self, step_us: int) -> None:
@@ -131,6 +145,8 @@ class Pace:
             self._due_s = time.monotonic()
             if self._stop.is_set():
                 raise Finished
+        if not self._real:
+            return
         self._due_s += step_us / 1e6
         ahead_s = self._due_s - time.monotonic()
         if ahead_s > 0.001:
@@ -141,9 +157,13 @@ class Pace:
 
 
 class VirtualServer:
-    """A virtual board on 127.0.0.1. kind: 'cpython' or 'micropython'. port 0: any free one; `start` returns it."""
+    """A virtual board on 127.0.0.1. kind: 'cpython' or 'micropython'. port 0: any free one; `start` returns it.
 
-    def __init__(self, layout: Layout, kind: str = "cpython", port: int = 0) -> None:
+    Its banks are empty at first. pace: False lets time run as fast as it can while a client is attached.
+    """
+
+    def __init__(self, layout: Layout, kind: str = "cpython", port: int = 0, pace: bool = True) -> None:
+        self._real = pace
         self._layout = layout
         self._kind = kind
         self._wanted_port = port
@@ -192,7 +212,7 @@ class VirtualServer:
             self._listener.close()
 
     def wait(self) -> None:
-        """Serve until interrupted, or until the board fails."""
+        """Serve until interrupted, or until the board fails (see `failure`)."""
         while not self._stop.is_set():
             self._stop.wait(0.2)
 
@@ -219,7 +239,7 @@ class VirtualServer:
 
     def _run(self) -> None:
         engine = Engine(self.world, self.script)
-        engine.pace = Pace(self.script, self._stop)
+        engine.pace = Pace(self.script, self._stop, self._real)
         slots = {0: self._layout.slot_lines()}
         try:
             if self._kind == "micropython":

@@ -46,6 +46,7 @@ class ScriptedHost:
         self.there = True
         self.reads = True
         self._out = b""
+        self.sent.clear()
         self._reader = Codec(host_reads())
         self._settings = []
         self._next_alive_us = now_us + ALIVE_US
@@ -57,6 +58,7 @@ class ScriptedHost:
         self.there = False
         self.reads = True
         self._out = b""
+        self.sent.clear()
 
     def next_due_us(self) -> int | None:
         """When it next has to say that it is there."""

@@ -5,7 +5,7 @@ from typing import Any
 
 from sim.layout import Layout, layout_of
 from sim.layout.problems import BadFile, FileProblem
-from sim.layout.reading import Document, Where, check_table, check_tables
+from sim.layout.reading import Document, Where, check_table, check_tables, named
 from sim.rehearsal import keys
 
 LISTS = {"bank": keys.SETTINGS_BANK, "junction": keys.SETTINGS_JUNCTION}
@@ -32,8 +32,7 @@ class Overridden(Document):
             origin = self._from.get(where[:length])
             if origin is not None:
                 scenario = self._scenario
-                name = ".".join(str(step + 1) if isinstance(step, int) else step for step in origin)
-                self.note(where, FileProblem(scenario.file, scenario.line_of(origin), name, message))
+                self.note(where, FileProblem(scenario.file, scenario.line_of(origin), named(origin), message))
                 return
         super().wrong(where, message)
 

@@ -29,8 +29,8 @@ label = "first"
 outcome = "done"
 ```
 
-The event log (`--log`) has one line an event: time, then `>` host to board, `<` board to host, `#` the world (actions of
-the script, pulses as the hardware gives them, restarts). It is the same to the byte on both interpreters.
+The event log (`--log`) has one line an event: time, then `>` host to board, `<` board to host, `#` the world (actions
+of the script, pulses as the hardware gives them, restarts). It is the same to the byte on both interpreters.
 """
 
 

@@ -55,6 +55,7 @@ def load_scenario(path: Path) -> Scenario:
     actions = resolver.steps("at", data["at"], "do", keys.ACTION, keys.ACTIONS)
     expectations = resolver.steps("expect", data["expect"], "what", keys.EXPECTATION, keys.EXPECTATIONS)
     resolver.check_labels(actions, expectations)
+    resolver.check_times(actions, expectations, data["duration_s"])
     document.raise_if_wrong()
     return Scenario(
         path, data["title"], layout, data["seed"], round(data["duration_s"] * 1e6), data["charged"], data["host"],
@@ -116,8 +117,9 @@ class _Resolver:
             self._document.wrong(where, "names one of bank, junction, button")
         if word == "clear" and len(named) > 1:
             self._document.wrong(where, "names one of bank, junction, button, or none")
-        if values.get("low_v", 0) > values.get("high_v", 100):
-            self._document.wrong((*where, "low_v"), "is above high_v")
+        for low, high in (("low_v", "high_v"), ("least", "most"), ("low_ms", "high_ms")):
+            if low in values and high in values and values[low] > values[high]:
+                self._document.wrong((*where, low), f"is above {high}")
 
     def _number(self, key: str, values: dict[str, Any]) -> int | str:
         layout = self._layout
@@ -140,22 +142,41 @@ class _Resolver:
         number: int = motors[int(text) - 1]
         return number
 
+    def check_times(self, actions: list[Step], expectations: list[Step], duration_s: float) -> None:
+        """Nothing may stand after the end, where it would never come about."""
+        for name, steps in (("at", actions), ("expect", expectations)):
+            for number, step in enumerate(steps):
+                for key in ("time_s", "at_s", "from_s"):
+                    if step.values.get(key, 0) > duration_s:
+                        self._document.wrong((name, number, key), f"is after the end, at {duration_s:g} s")
+
     def check_labels(self, actions: list[Step], expectations: list[Step]) -> None:
-        """Every label used must be one that is given, once."""
-        given: dict[str, str] = {}
+        """Every label used must be one that is given, once, and before it is used."""
+        given: dict[str, Step] = {}
         for number, step in enumerate(actions):
             label = step.values.get("label", "")
             if step.word in ("throw", "route") and label:
                 if label in given:
                     self._document.wrong(("at", number, "label"), f"another request is called '{label}'")
-                given[label] = step.word
+                given.setdefault(label, step)
         for name, steps in (("at", actions), ("expect", expectations)):
             for number, step in enumerate(steps):
                 label = step.values.get("label", "")
-                if label and label not in given:
-                    self._document.wrong((name, number, "label"), f"no request is called '{label}'")
-                elif label and step.word == "route" and name == "expect" and given[label] != "route":
-                    self._document.wrong((name, number, "label"), f"'{label}' is not a route")
+                message = _label_fault(step, given, name == "expect") if label else ""
+                if message:
+                    self._document.wrong((name, number, "label"), message)
+
+
+def _label_fault(step: Step, given: dict[str, Step], expected: bool) -> str:
+    """What is wrong with a label that a step uses, or nothing."""
+    label = step.values["label"]
+    if label not in given:
+        return f"no request is called '{label}'"
+    if expected and step.word == "route" and given[label].word != "route":
+        return f"'{label}' is not a route"
+    if not expected and step.values["time_s"] < given[label].values["time_s"]:
+        return f"is used before '{label}' is asked for"
+    return ""
 
 
 def numbered(text: str, names: dict[str, int], count: int, what: str) -> int:
