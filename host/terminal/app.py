@@ -17,7 +17,7 @@ from host.terminal.desk import Desk
 from host.terminal.desk_screen import DeskScreen
 from host.terminal.faults_screen import FaultsScreen
 from host.terminal.log_screen import LogScreen
-from host.terminal.main_screen import MainScreen
+from host.terminal.main_screen import ACTIONS, MainScreen
 from host.terminal.rows import Rows
 from host.terminal.session_like import SessionLike
 from host.terminal.tuning import Tuning
@@ -73,11 +73,25 @@ class DeskApp(App[int]):
             self.set_interval(POLL_S, self.tick)
 
     async def on_event(self, event: events.Event) -> None:
-        """The space bar goes before everything else: a field that takes text would keep it."""
-        if isinstance(event, events.Key) and event.key == "space":
-            self.action_stop()
-            return
+        """Keys of the desk are taken here, in the order in which they come.
+
+        The space bar goes before everything else: a field that takes text would keep it. The keys of the main screen
+        act before the next one is looked at: bindings act later, and a fast typist's second key would be lost.
+        """
+        if isinstance(event, events.Key):
+            if event.key == "space":
+                self.action_stop()
+                return
+            if isinstance(self.screen, MainScreen) and await self._main_key(event):
+                return
         await super().on_event(event)
+
+    async def _main_key(self, event: events.Key) -> bool:
+        """A key on the main screen. True if it meant something."""
+        if self.typed(event.key, event.character if event.is_printable else None):
+            return True
+        action = ACTIONS.get(event.key)
+        return action is not None and await self.run_action(action)
 
     def tick(self) -> None:
         """Take the news; draw what changed, but no faster than is useful."""
@@ -87,13 +101,13 @@ class DeskApp(App[int]):
             self.draw()
 
     def draw(self) -> None:
-        """Draw the screen in front."""
+        """Draw the screen in front; under the command palette the one that shows through."""
         self._changed = False
         self._drawn_s = self.desk.now_s()
-        if isinstance(self.screen, DeskScreen):
-            self.screen.show_all()
-
-    # ---- keys of the main screen
+        for screen in reversed(self.screen_stack):
+            if isinstance(screen, DeskScreen):
+                screen.show_all()
+                break
 
     def typed(self, key: str, character: str | None) -> bool:
         """A key that may belong to the number being typed. True if it did."""

@@ -11,7 +11,7 @@ from host.terminal.typing_view import Throw, Typing, Wrong, lie_choices, lie_key
 from host.terminal.voltage_history import VoltageHistory
 
 LEVELS = {"done": "good", "refused": "warn", "expired": "warn", "cancelled": "warn"}
-_SIGNS = {"info": "-", "good": "+", "warn": "!", "bad": "X"}
+_SIGNS = {"info": "", "good": "+ ", "warn": "! ", "bad": "X "}
 NO_LINK = "there is no connection to the board"
 
 
@@ -25,7 +25,7 @@ class Notice:
     @property
     def shown(self) -> str:
         """With its sign, so that it can be read without colour."""
-        return f"{_SIGNS[self.level]} {self.text}" if self.text else ""
+        return f"{_SIGNS[self.level]}{self.text}" if self.text else ""
 
 
 @dataclass(frozen=True)
@@ -54,7 +54,11 @@ class Desk:
         self.choosing = -1
         self.caution_wanted = False
         self._asked: dict[int, str] = {}
+        # Requests that are no throw, with how many answers there had been when they were asked.
+        self._unanswered: dict[str, int] = {}
         self._version = -1
+        self._connected = False
+        self._was_lost = False
 
     @property
     def model(self) -> LayoutModel:
@@ -70,6 +74,8 @@ class Desk:
         self.session.poll()
         self.history.take(self.model)
         self._look_at_answers()
+        self._look_at_other_answers()
+        self._look_at_connection()
         changed = self.model.version != self._version
         self._version = self.model.version
         return changed
@@ -162,22 +168,23 @@ class Desk:
         """Stop, now."""
         self.typing.clear()
         self.choosing = -1
+        self._expect_answer("stop")
         if self.session.stop():
-            self.say("warn", "STOP sent: a running pulse ends by itself, nothing further fires. r releases.")
+            self.say("warn", "STOP sent.")
         else:
             self.say("bad", f"STOP NOT SENT: {NO_LINK}. Use the panel's stop, or switch the coil supply off.")
 
     def release(self) -> None:
-        """End the stop."""
-        if not self.model.stopped and self.model.connection.state == "connected":
-            self.say("info", "There is no stop to release.")
-        elif self.session.release():
+        """End the stop. Asked for even if no stop is known of: the board's news of one may be on its way."""
+        self._expect_answer("release")
+        if self.session.release():
             self.say("info", "release asked for")
         else:
             self.say("bad", f"not released: {NO_LINK}")
 
     def clear(self, scope: str, number: int, who: str) -> None:
         """Put what is out back into use."""
+        self._expect_answer("clear")
         if self.session.clear(scope, number):
             self.say("info", f"asked to put {who} back into use")
         else:
@@ -200,12 +207,36 @@ class Desk:
             by_button = any(item.state == "waiting" for item in self.model.queue)
             text = "What waits was asked for by a button: stop ends it." if by_button else "Nothing waits."
             self.say("info", text)
-        elif all([self.session.cancel(number) for number in numbers]):
+            return
+        self._expect_answer("cancel")
+        if all([self.session.cancel(number) for number in numbers]):
             self.say("info", "cancelling what has not fired")
         else:
             self.say("bad", f"not cancelled: {NO_LINK}")
 
     # ---- answers
+
+    def _expect_answer(self, request: str) -> None:
+        answer = self.model.answers.get(request)
+        self._unanswered[request] = answer.count if answer is not None else 0
+
+    def _look_at_other_answers(self) -> None:
+        for request, count in list(self._unanswered.items()):
+            answer = self.model.answers.get(request)
+            if answer is None or answer.count == count:
+                continue
+            del self._unanswered[request]
+            if request == "stop" and answer.ok:
+                self.say("warn", "STOP is on: a running pulse ends by itself, nothing further fires. r releases.")
+            else:
+                self.say("good" if answer.ok else "bad", answer.text)
+
+    def _look_at_connection(self) -> None:
+        """Coming back is said: what did not leave before is not sent again by itself."""
+        before, self._connected = self._connected, self.model.connection.state == "connected"
+        if self._connected and not before and self._was_lost:
+            self.say("info", "The board answers again. Nothing that was asked for meanwhile is repeated.")
+        self._was_lost = self._was_lost or self.model.connection.state == "lost"
 
     def _held_back(self, who: str) -> bool:
         if self.caution_due:

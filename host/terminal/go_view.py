@@ -11,8 +11,11 @@ _FRAMES = {"go": ">> {} <<", "wait": ".. {} ..", "stop": "## {} ##", "out": "!! 
 
 def go_text(line: GoLine, width: int) -> str:
     """The whole line: sign, word, sentence."""
-    frame = _FRAMES.get(line.level, "{}").format(SIGNS.get(line.level, line.level.upper()))
-    return fit(f" {frame:<11}{_sentence(line)}", width)
+    word = SIGNS.get(line.level, line.level.upper())
+    frame = _FRAMES.get(line.level, "{}").format(word)
+    whole = f" {frame:<11}{_sentence(line)}"
+    # What to do matters more than the frame round the word.
+    return fit(whole if len(whole) <= width else f" {word}: {_sentence(line)}", width)
 
 
 def _sentence(line: GoLine) -> str:

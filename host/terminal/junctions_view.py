@@ -3,7 +3,7 @@
 from dataclasses import dataclass
 
 from host.model import LayoutModel
-from host.terminal.rows import Piece, Row, Rows, age, fit, row, volts
+from host.terminal.rows import Piece, Row, Rows, age, fit, row, volts, wrap
 from host.views import JunctionView
 
 _SOURCE_LOOKS = {"seen": "good", "sent": "plain", "none": "warn"}
@@ -45,6 +45,9 @@ def heading(width: int) -> Row:
 
 def junction_rows(model: LayoutModel, width: int, now_s: float, picked: int = -1) -> Rows:
     """A row a junction. `picked`: the junction whose number is being typed."""
+    if not model.junctions:
+        text = "No settings are known: connect a board that has some, or start with --layout."
+        return [row(Piece(f" {part}", "warn")) for part in wrap(text, max(10, width - 2))]
     columns = widths_for(width)
     return [_junction(model, junction, columns, now_s, junction.number == picked) for junction in model.junctions]
 

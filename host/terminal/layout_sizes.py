@@ -19,13 +19,11 @@ class Sizes:
     headings: bool
 
 
-def share_out(
-    width: int, height: int, junctions: int, banks: int, routes: int, faults: bool = False, queue: bool = True
-) -> Sizes:
+def share_out(width: int, height: int, junctions: int, banks: int, routes: int, faults: bool = False) -> Sizes:
     """Junctions first: all of them if they fit; then banks and routes beside them, queue and faults, events.
 
-    faults: something is out, queue: something waits. On a small screen what there is takes the room of what there is
-    not.
+    faults: something is out; on a small screen it takes room from queue and events. The queue itself moves nothing:
+    it fills and empties with every throw.
     """
     tall = height >= TALL
     answer = 2
@@ -37,5 +35,5 @@ def share_out(
     below = max(2, free - top)
     middle = max(1, min(below - 1, 4 + faults if not tall else max(4, below * 2 // 5)))
     left = width * 3 // 5 if width >= WIDE else min(width - 30, 46)
-    queue_width = 20 if faults and not queue and not tall else max(24, width * 2 // 5)
-    return Sizes(max(20, left), top, middle, queue_width, max(1, below - middle), answer, tall)
+    queue = max(24, width * 2 // 5 if faults else width * 3 // 5)
+    return Sizes(max(20, left), top, middle, queue, max(1, below - middle), answer, tall)

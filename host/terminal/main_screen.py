@@ -2,7 +2,6 @@
 
 from typing import ClassVar
 
-from textual import events
 from textual.app import ComposeResult
 from textual.binding import Binding, BindingType
 from textual.containers import Horizontal, Vertical
@@ -29,21 +28,27 @@ _ALL_KEYS = (
 )
 
 
+# What a key does: an action of the program.
+ACTIONS = {
+    "r": "release",
+    "o": "choose_route",
+    "m": "now_or_wait",
+    "plus": "change_wait(1)",
+    "minus": "change_wait(-1)",
+    "x": "cancel",
+    "c": "faults",
+    "f": "faults",
+    "t": "tuning",
+    "l": "log",
+    "question_mark": "help",
+    "q": "leave",
+}
+
+
 class MainScreen(DeskScreen[None]):
     """All first-glance answers on one screen."""
 
     BINDINGS: ClassVar[list[BindingType]] = [
-        Binding("r", "app.release", "Release"),
-        Binding("o", "app.choose_route", "Route"),
-        Binding("m", "app.now_or_wait", "Now or wait"),
-        Binding("plus", "app.change_wait(1)", "Longer wait", show=False),
-        Binding("minus", "app.change_wait(-1)", "Shorter wait", show=False),
-        Binding("x", "app.cancel", "Cancel"),
-        Binding("c,f", "app.faults", "Faults"),
-        Binding("t", "app.tuning", "Tuning"),
-        Binding("l", "app.log", "Event log"),
-        Binding("question_mark", "app.help", "Help"),
-        Binding("q", "app.leave", "Quit"),
         Binding("pageup", "page(-1)", "Junctions up", show=False),
         Binding("pagedown", "page(1)", "Junctions down", show=False),
     ]
@@ -69,7 +74,7 @@ class MainScreen(DeskScreen[None]):
         self._show_bottom(sizes)
         desk = self.desk
         prompt = typing_view.prompt_text(desk.typing, desk.model, desk.choosing)
-        self.query_one("#prompt", Words).say(between(prompt, f"[{desk.mode.short_text}]", self.size.width - 2))
+        self.query_one("#prompt", Words).say(between(prompt, f"[m: {desk.mode.short_text}]", self.size.width - 2))
 
     def _show_top(self, sizes: Sizes) -> None:
         model, now_s = self.desk.model, self.desk.now_s()
@@ -102,7 +107,7 @@ class MainScreen(DeskScreen[None]):
     def _arrange(self) -> Sizes:
         model = self.desk.model
         counts = (len(model.junctions), len(model.banks), len(model.routes))
-        sizes = share_out(self.size.width, self.size.height, *counts, bool(model.faults), bool(model.queue))
+        sizes = share_out(self.size.width, self.size.height, *counts, bool(model.faults))
         for name, width, height in (
             ("top", None, sizes.top),
             ("middle", None, sizes.middle),
@@ -123,14 +128,6 @@ class MainScreen(DeskScreen[None]):
         top, height = lines.scroll_offset.y, max(1, lines.size.height)
         if not top <= place < top + height:
             lines.scroll_to(y=max(0, place - height // 2), animate=False)
-
-    # ---- keys
-
-    def on_key(self, event: events.Key) -> None:
-        """Digits and what belongs to them; other keys are bindings."""
-        if self.desk_app.typed(event.key, event.character if event.is_printable else None):
-            event.stop()
-            event.prevent_default()
 
     def action_page(self, direction: int) -> None:
         """Scroll the junctions by a page."""

@@ -34,7 +34,7 @@ class Mode:
     @property
     def short_text(self) -> str:
         """'NOW' or 'WAIT 5.0 s'."""
-        return f"WAIT up to {seconds(self.longest_ms)}" if self.waits else "NOW or not"
+        return f"WAIT {seconds(self.longest_ms)}" if self.waits else "NOW"
 
     @property
     def text(self) -> str:

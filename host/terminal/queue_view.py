@@ -47,15 +47,11 @@ def queue_title(model: LayoutModel, now_s: float) -> str:
 
 
 def queue_rows(model: LayoutModel, width: int, height: int, now_s: float) -> Rows:
-    """A row a throw, as many as fit; the last row counts the rest."""
+    """A row a throw, the soonest, as many as fit; the title counts them all."""
     items = in_order(model, now_s)
     if not items:
         return [row(Piece(" nothing waits", "dim"))]
-    shown = items if len(items) <= height else items[: max(1, height - 1)]
-    rows = [_item(model, item, width, now_s) for item in shown]
-    if len(shown) < len(items):
-        rows.append(row(Piece(fit(f"     and {len(items) - len(shown)} more", width), "dim")))
-    return rows
+    return [_item(model, item, width, now_s) for item in items[: max(1, height)]]
 
 
 def _item(model: LayoutModel, item: QueueItem, width: int, now_s: float) -> Row:

@@ -6,7 +6,7 @@ from host import wording
 from host.model import LayoutModel, Records
 from host.settings_diff import Difference, differences, label_of
 from host.terminal.session_like import SessionLike, TransferLike
-from host.terminal.tuning_table import TUNABLE, label_of_key, limits_text, parse, shown_value
+from host.terminal.tuning_table import TUNABLE, label_of_key, limits_text, parse, shown_value, units_text
 from shared_protocol import settings_table as table
 from shared_protocol.codec import plain
 from shared_protocol.fields import Field, Message
@@ -38,7 +38,7 @@ class Entry:
     @property
     def sentence(self) -> str:
         """What it is, from the table."""
-        return f"{self.label}: {self.field.text}"
+        return f"{self.label} - {self.field.text} {units_text(self.field)}".rstrip()
 
 
 @dataclass(frozen=True)

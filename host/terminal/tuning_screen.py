@@ -20,7 +20,7 @@ from host.terminal.rows import Piece, Rows, row
 from host.terminal.tuning import Entry, Place, Subject, Tuning, change_text
 
 # The curve is drawn again no faster than this: it is by far the largest part of the screen.
-CURVE_S = 0.5
+CURVE_S = 1.0
 
 
 class EntryRow(Horizontal):
@@ -218,6 +218,8 @@ class TuningScreen(DeskScreen[None]):
         transfer = self._tuning.transfer
         if transfer is not None and transfer.open:
             transfer.cancel()
+            if transfer.open:
+                self.desk.say("info", "All is sent: the board's answer decides. It comes within seconds.")
         elif self.focused is not chooser:
             chooser.focus()
         else:
@@ -247,7 +249,9 @@ class TuningScreen(DeskScreen[None]):
             self.show_all()
             return
         self.desk_app.push_screen(
-            AskScreen("Old and new - send to the board?", self._change_rows, ("enter",), "Enter send  Esc back"),
+            AskScreen(
+                "Old and new - send to the board?", self._change_rows, ("enter",), "Enter send  Esc back  SPACE stop"
+            ),
             self._reviewed,
         )
 

@@ -51,7 +51,14 @@ def limits_text(field: Field) -> str:
     """Unit and range, or the words to choose from."""
     if field.kind == WORD:
         return " | ".join(field.words)
-    return f"{field.low} to {field.high} {field.unit}".strip()
+    unit = f"({field.unit})" if field.unit[:1].isdigit() else field.unit
+    return f"{field.low} to {field.high} {unit}".strip()
+
+
+def units_text(field: Field) -> str:
+    """Which units may be written behind the number; '' if there is no choice."""
+    names = list(_SUFFIXES.get(field.unit, {}))
+    return f"May be typed in {' or '.join(names)}." if len(names) > 1 or (names and field.unit != names[0]) else ""
 
 
 def parse(field: Field, text: str) -> int | str:

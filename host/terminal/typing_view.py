@@ -121,9 +121,11 @@ def prompt_text(typing: Typing, model: LayoutModel, choosing: int = -1) -> str:
     if isinstance(meaning, Wrong):
         return start + meaning.text
     junction = model.junctions[meaning.junction]
+    # What Enter does comes first: on a narrow screen the end is cut.
     if isinstance(meaning, Choose):
-        return f"{start}{junction.name} ({junction.word}): Enter, then choose: {lie_choices(junction)}"
-    return f"{start}{junction.name}: {junction.word} > {junction.word_of(meaning.lie)}. Enter throws"
+        return f"{start}Enter asks which lie of {junction.name} (lies {junction.word})"
+    hint = banks_hint(model, junction, meaning.lie)
+    return f"{start}Enter throws {junction.name} to {junction.word_of(meaning.lie)} (lies {junction.word}; {hint})"
 
 
 def banks_hint(model: LayoutModel, junction: JunctionView, lie: int) -> str:
