@@ -146,6 +146,8 @@ def fault_text(fault: FaultView) -> str:
 
 def out_line(fault: FaultView, others: int) -> GoLine:
     """The go line while something is out."""
-    near = f"{fault.near_name} " if fault.near_name and fault.scope == "bank" else ""
+    # The junction thrown last is evidence for its driver or coil, not for the supply or the sense.
+    at_coil = fault.scope == "bank" and fault.code in ("no_drop", "held_down")
+    near = f"{fault.near_name} " if fault.near_name and at_coil else ""
     more = f" (and {others} more)" if others else ""
     return GoLine("out", f"{fault.who} out: {near}{_SHORT_FAULTS.get(fault.code, fault.what)}{more}")
