@@ -49,6 +49,8 @@ class Outbox:
         self._unsent = 0
         self._waiting = 0
         self._again = Marks(1)
+        # Something was added since the last look: its time to be sent again begins then.
+        self._new = False
         self.dropped = 0
         self.open = False
 
@@ -63,6 +65,7 @@ class Outbox:
             self._waiting -= 1
             if not line.sent:
                 self._unsent -= 1
+        self._new = True
         self._number += 1
         self._serial += 1
         line.serial = self._serial
@@ -156,12 +159,12 @@ class Outbox:
 
     def tick(self, now_ms: int) -> None:
         """Ask again for acknowledgement when it is due."""
-        if self._waiting and self._unsent == 0:
-            if self._again.since(0, now_ms) >= AGAIN_MS:
-                self._again.set(0, now_ms)
-                self.again()
-        elif self._unsent:
+        if self._new or self._unsent:
+            self._new = False
             self._again.set(0, now_ms)
+        elif self._waiting and self._again.since(0, now_ms) >= AGAIN_MS:
+            self._again.set(0, now_ms)
+            self.again()
 
     def _next_line(self) -> bool:
         """Write the next record into the buffer, in the order in which they were filled; False if there is none."""

@@ -447,6 +447,16 @@ def case_a_kept_message_is_sent_until_acknowledged() -> None:
     assert not bench.all("outcome")
 
 
+def case_a_kept_message_is_sent_once_if_it_is_acknowledged() -> None:
+    for step_us in (100, 250, 500, 1000):
+        bench = ready()
+        number = bench.throw(0, 1)
+        bench.run(200, step_us)
+        bench.send("clear", scope="all", i=0)
+        bench.run(700, step_us)
+        assert len([found for found in bench.all("outcome") if found["id"] == number]) == 1, step_us
+
+
 def case_the_queue_says_when_it_is_full() -> None:
     bench = ready(None, 11_000, 11_000)
     numbers = []
