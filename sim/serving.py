@@ -21,6 +21,7 @@ POLL_S = 0.02
 # How far the board may lag behind real time before it gives up catching up.
 LAG_S = 0.5
 LONGEST_BACKLOG = 1 << 16
+BOOT_NUMBERS = 900_000_000
 
 
 class ServingError(Exception):
@@ -238,7 +239,9 @@ class VirtualServer:
             self.script.attach(client)
 
     def _run(self) -> None:
-        engine = Engine(self.world, self.script)
+        # A board that keeps its boot count in flash never gives a number twice; this one takes it from the clock, so
+        # that a host that was connected to another run sees a restart.
+        engine = Engine(self.world, self.script, boot=1 + int(time.time()) % BOOT_NUMBERS)
         engine.pace = Pace(self.script, self._stop, self._real)
         slots = {0: self._layout.slot_lines()}
         try:
