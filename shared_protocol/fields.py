@@ -41,7 +41,8 @@ class Field:
         self.kind = kind
         self.low = low
         self.high = high
-        self.prefix = b'"' + key.encode() + b'":'
+        # With the comma before it: a message's name comes first.
+        self.prefix = b',"' + key.encode() + b'":'
 
     def explained(self, unit: str, text: str) -> "Field":
         """Keep unit and sentence, where there is memory for them."""
@@ -63,7 +64,7 @@ def word(key: str, words: "tuple[str, ...]", text: str, default: "int | None" = 
     """A field that holds one of some fixed ASCII words."""
     field = Field(key, WORD, 0, len(words) - 1).explained("", text)
     field.words = words
-    field.word_bytes = tuple([each.encode() for each in words])
+    field.word_bytes = tuple([b'"' + each.encode() + b'"' for each in words])
     if default is not None:
         field.default = default
     return field

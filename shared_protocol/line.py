@@ -33,7 +33,6 @@ class LineWriter:
     def __init__(self) -> None:
         self.buffer = bytearray(BODY_MAX)
         self.length = 0
-        self._digits = bytearray(12)
 
     def write(self, message: Message, values: "list[object]") -> int:
         """Write `message` with `values` (in table order, see fields.Field). Returns the length, 0 if too long."""
@@ -41,15 +40,15 @@ class LineWriter:
         fits = self._bytes(message.prefix)
         position = 0
         for field in message.fields:
-            fits = fits and self._byte(44) and self._bytes(field.prefix)
             value = values[position]
             kind = field.kind
+            fits = fits and self._bytes(field.prefix)
             if kind == INT:
                 fits = fits and self._int(value)  # type: ignore[arg-type]
             elif kind == WORD:
-                fits = fits and self._quoted(field.word_bytes[value])  # type: ignore[call-overload]
+                fits = fits and self._bytes(field.word_bytes[value])  # type: ignore[call-overload]
             elif kind == NAME:
-                fits = fits and self._quoted(value)  # type: ignore[arg-type]
+                fits = fits and self._byte(34) and self._bytes(value) and self._byte(34)  # type: ignore[arg-type]
             else:
                 fits = fits and self._ints(value)  # type: ignore[arg-type]
             position += 1
@@ -65,9 +64,9 @@ class LineWriter:
         return True
 
     def _bytes(self, text: bytes) -> bool:
-        if self.length + len(text) > BODY_MAX:
-            return False
         place = self.length
+        if place + len(text) > BODY_MAX:
+            return False
         buffer = self.buffer
         for byte in text:
             buffer[place] = byte
@@ -75,27 +74,26 @@ class LineWriter:
         self.length = place
         return True
 
-    def _quoted(self, text: bytes) -> bool:
-        return self._byte(34) and self._bytes(text) and self._byte(34)
-
     def _int(self, number: int) -> bool:
         if number < 0:
             if not self._byte(45):
                 return False
             number = -number
-        digits = self._digits
-        count = 0
+        place = self.length + 1
+        rest = number // 10
+        while rest:
+            place += 1
+            rest //= 10
+        if place > BODY_MAX:
+            return False
+        self.length = place
+        buffer = self.buffer
         while True:
-            digits[count] = 48 + number % 10
-            count += 1
+            place -= 1
+            buffer[place] = 48 + number % 10
             number //= 10
             if number == 0:
-                break
-        while count:
-            count -= 1
-            if not self._byte(digits[count]):
-                return False
-        return True
+                return True
 
     def _ints(self, numbers: "list[int]") -> bool:
         if not self._byte(91):

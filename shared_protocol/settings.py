@@ -72,6 +72,7 @@ class BankSettings(Record):
     chain: "list[int]"
     adc: int
     range_mv: int
+    zero_mv: int
     full_mv: int
     peak_mv: int
     gap_ms: int

@@ -137,6 +137,7 @@ SET_BANK = Message(
         numbers("chain", 0, 29, 2, "Pins of its part of the output chain: latch, output enable."),
         whole("adc", 0, 2, "", "ADC input of its voltage sense (0: pin 26)."),
         whole("range_mv", 5000, 40_000, "mV", "Bank voltage at the highest ADC reading.", 33_000),
+        whole("zero_mv", -1000, 1000, "mV", "Added to every reading: what the sense reads too little at 0 V.", 0),
         whole("full_mv", 3000, 33_000, "mV", "Voltage of the full bank."),
         whole("peak_mv", 3000, 40_000, "mV", "Highest voltage that the supply can give, unloaded."),
         whole("gap_ms", 5, 60, "ms", "Shortest time between two pulses of this bank.", 20),

@@ -46,12 +46,21 @@ class Noise:
 class Sense:
     """One bank's divider. fault: 'none', 'upper_open' (reads nothing) or 'lower_open' (reads the most).
 
-    range_mv is what the divider really makes of the highest reading; believed_mv is what the settings say of it.
+    range_mv is what the divider really makes of the highest reading, zero_mv what it really lacks at 0 V;
+    believed_mv and believed_zero_mv are what the settings say of them.
     """
 
     range_mv: int
     believed_mv: int
+    zero_mv: int = 0
+    believed_zero_mv: int = 0
     fault: str = "none"
+
+    @property
+    def is_right(self) -> bool:
+        """True if the divider is whole and as the settings say."""
+        right = self.believed_mv == self.range_mv and self.believed_zero_mv == self.zero_mv
+        return right and self.fault == "none"
 
     def steps(self, volts: float, noise: Noise) -> int:
         """One conversion."""
@@ -60,7 +69,7 @@ class Sense:
         elif self.fault == "lower_open":
             return ADC_STEPS - 1
         else:
-            reading = volts * 1000 / self.range_mv * ADC_STEPS + noise.next()
+            reading = (volts * 1000 - self.zero_mv) / self.range_mv * ADC_STEPS + noise.next()
         return max(0, min(ADC_STEPS - 1, int(reading)))
 
     def read(self, volts: float, fresh_us: int, noise: Noise) -> Reading:
@@ -80,4 +89,4 @@ class Sense:
         return Reading(self._mv(lowest), self._mv(total) // FRESH_SAMPLES, self._mv(newest), 0)
 
     def _mv(self, steps: int) -> int:
-        return steps * self.believed_mv >> ADC_BITS
+        return max(0, (steps * self.believed_mv >> ADC_BITS) + self.believed_zero_mv)

@@ -58,7 +58,7 @@ class World:
         self.circuit = Circuit(self.supply, self.banks, bank_of, random.Random(self.seed + 1))
         self.hardware = [PulseHardware(bank.i, bank.gap_ms * 1000) for bank in self.settings.banks]
         self.inputs = Inputs(self.settings, self.motors, random.Random(self.seed + 2))
-        self.sense = [Sense(bank.range_mv, bank.range_mv) for bank in self.settings.banks]
+        self.sense = [Sense(bank.range_mv, bank.range_mv, bank.zero_mv, bank.zero_mv) for bank in self.settings.banks]
         # Output of a bank: the motor and coil that are wired to it.
         self._wired: dict[tuple[int, int], tuple[int, int]] = {}
         for motor in self.settings.motors:
@@ -89,6 +89,7 @@ class World:
         for bank, unit, sense in zip(settings.banks, self.hardware, self.sense, strict=False):
             unit.gap_us = bank.gap_ms * 1000
             sense.believed_mv = bank.range_mv
+            sense.believed_zero_mv = bank.zero_mv
 
     def _true_positions(self, settings: Settings) -> list[int | None]:
         """Where motors lie, if the settings speak of the motors that are there; else unknown."""
@@ -163,7 +164,7 @@ class World:
             raise InvariantBroken("a pulse after the stop was confirmed")
         volts = self.circuit.bank_v(bank)
         sense = self.sense[bank]
-        known_mv = volts * 1000 if sense.fault == "none" and sense.believed_mv == sense.range_mv else None
+        known_mv = volts * 1000 if sense.is_right else None
         margin_mv = MARGIN_STEPS * sense.range_mv / ADC_STEPS
         self.rules.judge((bank, group, mask), width_us, known_mv, margin_mv, self.now_us)
         unit = self.hardware[bank]

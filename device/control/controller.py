@@ -26,11 +26,15 @@ from shared_protocol.words import HELD_DOWN, REFUSED, SCOPE_BANK, WHY_HOST_LOST,
 
 TYPE_CHECKING = False
 if TYPE_CHECKING:
+    from collections.abc import Callable
+
     from device.board.seam import Board
 
 # With nothing to do, the banks are still looked at this often.
 IDLE_US = 20_000
 SOON_US = 1000
+# What a tick may spend on slices before it goes on (the last one begun is finished).
+SLICES_US = 60
 # Garbage is collected when nothing is due for this long (see Board.collect).
 COLLECT_IDLE_US = 10_000
 # When told to leave: the outcomes get this long to go out.
@@ -65,7 +69,13 @@ class Controller:
         self._reset_after = False
         self._leave_ms = 0
         self._host_there = False
-        self._last_ms = -1
+        self._heard_ms = -1
+        self._inputs_changed = False
+        self._slices: "list[Callable[[int], None]]" = []
+        self._slice_ms: "list[int]" = []
+        self._slice = 0
+        self._bank = 0
+        self._lay_slices()
 
     # ---- settings
 
@@ -97,71 +107,133 @@ class Controller:
         self._contacts = Contacts(plant, firing)
         self._buttons = Buttons(plant, queue)
         self._followers = Followers(plant, self.board)
+        self._lay_slices()
         for bank in range(len(plant.banks)):
             self.board.charge(bank, True)
 
     # ---- the loop
 
     def tick(self) -> None:
-        """One tick. Allocates nothing."""
+        """One tick. Allocates nothing.
+
+        In each: the voltages that a throw waits for, and the link. What counts in milliseconds is done in slices, as
+        many as fit into SLICES_US: so a tick stays short, and a pulse is not late because of a lamp.
+        """
         board = self.board
+        endpoint = self.endpoint
+        begun_us = board.ticks_us()
         now_ms = board.ticks_ms()
-        board.feed_watchdog()
-        # Voltages, queue and link are looked at in every tick; what counts in milliseconds, once in each.
-        new_ms = now_ms != self._last_ms
-        self._last_ms = now_ms
-        self.endpoint.read()
-        if self.endpoint.told_to_leave and not self.leaving:
-            self.leave(False, now_ms)
-        if self.plant is not None:
-            self._tick_plant(self.plant, new_ms, now_ms)
-        if new_ms:
-            self._watch_host(now_ms)
-            self.endpoint.sweep(now_ms)
-            self.teller.sweep(now_ms)
-            self.teller.bad_lines = self.endpoint.bad_lines
+        queue = self.queue
+        hot = queue is not None and queue.dispatch.hot
+        if now_ms != self._heard_ms or endpoint.reading:
+            self._heard_ms = now_ms
+            endpoint.read(hot)
+            if endpoint.told_to_leave and not self.leaving:
+                self.leave(False, now_ms)
+        self._sweep(begun_us, now_ms)
+        if queue is not None:
+            self._tick_queue(queue, now_ms)
         if self.outbox.open:
-            if new_ms or self.teller.telling:
+            if self.teller.telling:
                 self._tell(now_ms)
-            self.endpoint.write(self.busy)
+            endpoint.write(hot)
         if self.leaving:
             self._go_on_leaving(now_ms)
-        self.has_work = self.endpoint.line_waiting or self.lies.wants_work or self._staging_disturbed
+        self.has_work = endpoint.line_waiting or self.lies.wants_work or self._staging_disturbed
         self.due_us = self._due_us(now_ms)
         self.may_collect = self._litter and self.due_us >= COLLECT_IDLE_US
+
+    def _tick_queue(self, queue: Queue, now_ms: int) -> None:
+        firing = self._firing
+        plant = self.plant
+        assert firing is not None and plant is not None
+        if firing.running:
+            # The lowest reading of a pulse tells how deep it went.
+            for gate in plant.banks:
+                if gate.before_mv >= 0:
+                    gate.look()
+        fired = firing.fired
+        queue.dispatch.hold(self.store.staging)
+        queue.tick(now_ms)
+        if firing.fired != fired:
+            self._litter = True
+
+    def _sweep(self, begun_us: int, now_ms: int) -> None:
+        """The next slices: each once a millisecond at most, until the tick's time is used up."""
+        slices = self._slices
+        for _ in slices:
+            place = self._slice
+            if self._slice_ms[place] == now_ms:
+                return
+            self._slice_ms[place] = now_ms
+            self._slice = place + 1 if place + 1 < len(slices) else 0
+            slices[place](now_ms)
+            if elapsed(self.board.ticks_us(), begun_us) >= SLICES_US:
+                return
+
+    def _lay_slices(self) -> None:
+        """List what is done once a millisecond, in this order."""
+        slices: "list[Callable[[int], None]]" = []
+        if self.plant is not None:
+            slices += [self._slice_bank for _ in self.plant.banks]
+            slices += [self._slice_contacts, self._slice_panel, self._slice_followers]
+        slices += [self._slice_host, self._slice_tell]
+        self._slices = slices
+        self._slice_ms = [-1] * len(slices)
+        self._slice = 0
+        self._bank = 0
+
+    def _slice_bank(self, now_ms: int) -> None:
+        plant = self.plant
+        assert plant is not None
+        number = self._bank
+        self._bank = number + 1 if number + 1 < len(plant.banks) else 0
+        gate = plant.banks[number]
+        gate.update(now_ms)
+        plant.watches[number].update(now_ms)
+        # A bank that is held down is no longer charged, where a cut-off is fitted.
+        wanted = plant.faults.codes[SCOPE_BANK][number] != HELD_DOWN
+        if gate.charge_on != wanted:
+            gate.charge_on = wanted
+            self.board.charge(number, wanted)
+
+    def _slice_contacts(self, now_ms: int) -> None:
+        assert self.plant is not None and self._contacts is not None
+        self.plant.motors.sweep(now_ms)
+        if self._contacts.tick(now_ms):
+            self._inputs_changed = True
+            # A key may bar a throw, or no longer.
+            self.plant.changes.happened = True
+
+    def _slice_panel(self, now_ms: int) -> None:
+        buttons = self._buttons
+        assert self.plant is not None and buttons is not None and self.queue is not None and self._firing is not None
+        buttons.tick(now_ms, self._inputs_changed, self._firing.busy)
+        self._inputs_changed = False
+        if buttons.wants_stop or buttons.wants_release or buttons.wants_clear:
+            self._board_buttons(buttons, now_ms)
+        self.lies.tick(self.plant, self.queue, now_ms, self.leaving)
+
+    def _slice_followers(self, now_ms: int) -> None:
+        assert self._followers is not None
+        self._followers.tick(now_ms)
+
+    def _slice_host(self, now_ms: int) -> None:
+        self.board.feed_watchdog()
+        self._watch_host(now_ms)
+        self.endpoint.sweep(now_ms)
+        self.teller.sweep(now_ms)
+        self.teller.bad_lines = self.endpoint.bad_lines
+
+    def _slice_tell(self, now_ms: int) -> None:
+        if self.outbox.open and not self.teller.telling:
+            self._tell(now_ms)
 
     def _tell(self, now_ms: int) -> None:
         self.teller.tick(self.plant, self.queue, now_ms)
         if self.teller.sending_settings:
             self.teller.send_settings()
         self.outbox.tick(now_ms)
-
-    def _tick_plant(self, plant: Plant, new_ms: bool, now_ms: int) -> None:
-        queue = self.queue
-        firing = self._firing
-        contacts = self._contacts
-        buttons = self._buttons
-        followers = self._followers
-        if queue is None or firing is None or contacts is None or buttons is None or followers is None:
-            return
-        for gate in plant.banks:
-            gate.update(now_ms)
-        if new_ms:
-            for watch in plant.watches:
-                watch.update(now_ms)
-            self._cut_off(plant)
-            plant.motors.sweep(now_ms)
-            changed = contacts.tick(now_ms)
-            buttons.tick(now_ms, changed, firing.busy)
-            if buttons.wants_stop or buttons.wants_release or buttons.wants_clear:
-                self._board_buttons(buttons, now_ms)
-            self.lies.tick(plant, queue, now_ms, self.leaving)
-            followers.tick(now_ms)
-        fired = firing.fired
-        queue.held = self.store.staging
-        queue.tick(now_ms)
-        if firing.fired != fired:
-            self._litter = True
 
     def _board_buttons(self, buttons: Buttons, now_ms: int) -> None:
         if buttons.wants_stop:
@@ -173,15 +245,6 @@ class Controller:
         buttons.wants_stop = False
         buttons.wants_release = False
         buttons.wants_clear = False
-
-    def _cut_off(self, plant: Plant) -> None:
-        """A bank that is held down is no longer charged, where a cut-off is fitted."""
-        codes = plant.faults.codes[SCOPE_BANK]
-        for gate in plant.banks:
-            wanted = codes[gate.number] != HELD_DOWN
-            if gate.charge_on != wanted:
-                gate.charge_on = wanted
-                self.board.charge(gate.number, wanted)
 
     def _watch_host(self, now_ms: int) -> None:
         silence_ms = self.plant.silence_ms if self.plant is not None else 3000
@@ -195,11 +258,12 @@ class Controller:
 
     def _due_us(self, now_ms: int) -> int:
         """How long nothing is due."""
-        if self.has_work or self.leaving or self.outbox.to_send or self.teller.telling:
-            return 0
         if self.queue is not None and self.queue.throws.count:
             return 0
-        due_us = self.teller.due_ms(self.plant, now_ms) * 1000
+        teller = self.teller
+        if self.has_work or self.leaving or self.outbox.to_send or teller.telling or teller.telemetry:
+            return 0
+        due_us = teller.due_ms(self.plant, now_ms) * 1000
         if due_us > IDLE_US:
             due_us = IDLE_US
         if self._contacts is not None and self._contacts.sampling:
@@ -255,6 +319,7 @@ class Controller:
         """Ends the stop."""
         if self.plant is not None:
             self.plant.stopped = False
+            self.plant.changes.happened = True
 
     def clear(self, scope: int, number: int) -> bool:
         """Put one bank, junction or button back into use; False if it was not out."""

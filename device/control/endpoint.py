@@ -1,7 +1,7 @@
 """The board's end of the link: bytes in and out, a few a tick, and whether a host is there."""
 
 from device.control.outbox import Outbox
-from device.control.ticks import Marks
+from device.control.ticks import Marks, elapsed
 from shared_protocol.crc import CrcTables
 from shared_protocol.line import GOOD, Decoded, LineDecoder
 from shared_protocol.reader import LINE, NOTHING, TEXT, LineReader
@@ -11,10 +11,10 @@ TYPE_CHECKING = False
 if TYPE_CHECKING:
     from device.board.seam import Board
 
-# Bytes a tick. A throw that waits for its moment must not wait for telemetry.
+# Bytes a tick. A throw that waits for its moment must not wait for a message or for telemetry: then this time at most.
 BYTES_IN = 64
 BYTES_OUT = 64
-BYTES_OUT_BUSY = 16
+HURRY_US = 60
 LEAVE_BYTE = 3
 
 _HEARD = 0
@@ -30,35 +30,45 @@ class Endpoint:
         self.decoder = LineDecoder(board_reads())
         self._marks = Marks(1)
         self.line_waiting = False
+        self.reading = False
         self.told_to_leave = False
         self.bad_lines = 0
 
-    def read(self) -> None:
-        """Take bytes until a line is whole, at most BYTES_IN."""
+    def read(self, hurry: bool) -> None:
+        """Take bytes until a line is whole, for a short time only in a hurry. `reading`: there may be more."""
         if self.line_waiting:
             return
-        for _ in range(BYTES_IN):
-            byte = self._board.read_byte()
+        board = self._board
+        reader = self._reader
+        begun_us = board.ticks_us()
+        self.reading = True
+        for count in range(BYTES_IN):
+            byte = board.read_byte()
             if byte < 0:
+                self.reading = False
                 return
             if byte == LEAVE_BYTE:
                 self.told_to_leave = True
                 continue
-            result = self._reader.feed(byte)
+            result = reader.feed(byte)
             if result == LINE:
                 self.line_waiting = True
                 return
-            if result != NOTHING and (self._reader.length or result != TEXT):
+            if result != NOTHING and (reader.length or result != TEXT):
                 self.bad_lines += 1
-
-    def write(self, busy: bool) -> None:
-        """Give bytes to the board as long as it takes them."""
-        outbox = self._outbox
-        for _ in range(BYTES_OUT_BUSY if busy else BYTES_OUT):
-            byte = outbox.take_byte()
-            if byte < 0 or not self._board.write_byte(byte):
+            if hurry and count & 3 == 3 and elapsed(board.ticks_us(), begun_us) >= HURRY_US:
                 return
-            outbox.byte_sent()
+
+    def write(self, hurry: bool) -> None:
+        """Give bytes to the board as long as it takes them, for a short time only in a hurry."""
+        outbox = self._outbox
+        if not outbox.to_send:
+            return
+        board = self._board
+        begun_us = board.ticks_us()
+        for _ in range(BYTES_OUT // 4):
+            if outbox.send(board, 4) or (hurry and elapsed(board.ticks_us(), begun_us) >= HURRY_US):
+                return
 
     def take_line(self, now_ms: int) -> "Decoded | None":
         """Decode the line that waits; None (and counted) if it is not a right message. Allocates."""

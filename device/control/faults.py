@@ -1,6 +1,7 @@
 """The book of faults: the first one of each bank, junction and button is kept until the operator clears it."""
 
 from device.control.outbox import Outbox
+from device.control.ticks import Changes
 from shared_protocol import messages
 from shared_protocol.words import SCOPE_BANK, SCOPE_BUTTON, SCOPE_JUNCTION
 
@@ -8,8 +9,9 @@ from shared_protocol.words import SCOPE_BANK, SCOPE_BUTTON, SCOPE_JUNCTION
 class FaultBook:
     """Codes of words.FAULTS by scope and number; 0 means in use."""
 
-    def __init__(self, banks: int, junctions: int, buttons: int, outbox: Outbox) -> None:
+    def __init__(self, banks: int, junctions: int, buttons: int, outbox: Outbox, changes: Changes) -> None:
         self._outbox = outbox
+        self._changes = changes
         self.codes = [[0] * banks, [0] * junctions, [0] * buttons]
         self._first = [[0] * banks, [0] * junctions, [0] * buttons]
         self._second = [[0] * banks, [0] * junctions, [0] * buttons]
@@ -32,6 +34,7 @@ class FaultBook:
         if self.codes[scope][number]:
             return False
         self.codes[scope][number] = code
+        self._changes.happened = True
         self._first[scope][number] = first
         self._second[scope][number] = second
         self._near[scope][number] = near
@@ -53,6 +56,7 @@ class FaultBook:
         if not self.codes[scope][number]:
             return False
         self.codes[scope][number] = 0
+        self._changes.happened = True
         values = self._outbox.kept(messages.CLEARED)
         values[1] = scope
         values[2] = number

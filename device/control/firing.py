@@ -62,8 +62,11 @@ class Firing:
         self._throws = throws
         self.plan = PulsePlan(plant)
         self._on_bank: "list[Throw | None]" = [None] * len(plant.banks)
+        # Pulses that run or are not judged yet; throws whose contacts are waited for; pulses so far.
+        self.running = 0
         self.answering = 0
         self.fired = 0
+        self._answers_ms = -1
 
     def aim(self, throw: Throw) -> None:
         """Note which bank the next pulse of `throw` needs."""
@@ -94,14 +97,14 @@ class Firing:
             return gate.mean_mv
         return gate.before_mv - recharge.drop_mv(gate.settings, throw.cohm, gate.before_mv, throw.width_us)
 
-    def rest_left_ms(self, throw: Throw, now_ms: int) -> int:
-        """How long the coils of the next pulse of `throw` must still rest. Uses the plan as it was made last."""
+    def rest_left_ms(self, throw: Throw, plan: PulsePlan, now_ms: int) -> int:
+        """How long the coils of `plan`, the next pulse of `throw`, must still rest."""
         junction = self._plant.junctions[throw.junction]
         at = junction.settings.lies[throw.lie].at
         longest = 0
         place = 0
         for motor in junction.settings.motors:
-            if self.plan.place < 0 or place == self.plan.place:
+            if plan.place < 0 or place == plan.place:
                 left = self._plant.motors.rest_left_ms(motor, (at >> place) & 1, now_ms)
                 if left > longest:
                     longest = left
@@ -118,17 +121,14 @@ class Firing:
     @property
     def busy(self) -> bool:
         """True while a pulse runs or is not judged yet."""
-        for throw in self._on_bank:
-            if throw is not None:
-                return True
-        return False
+        return self.running > 0
 
     # ---- starting
 
-    def start(self, throw: Throw, now_ms: int) -> None:
+    def start(self, throw: Throw, plan: PulsePlan, now_ms: int) -> None:
         """Give the pulse that `plan` holds for `throw`. If the hardware refuses, the throw goes on waiting."""
-        plan = self.plan
         gate = self._plant.banks[plan.bank]
+        mean_mv = self._board.bank_mean_mv(plan.bank)
         width_us = plan.width_us(gate.low_mv)
         if not self._plant.allowed[plan.bank].allows(plan.group, plan.mask, width_us):
             self._throws.finish(throw, FAILED, WHY_FORBIDDEN, throw.junction, passed_ms(throw, now_ms))
@@ -136,8 +136,8 @@ class Firing:
         if not self._board.start_pulse(plan.bank, plan.group, plan.mask, width_us):
             return
         self.fired += 1
-        throw.mv = gate.mean_mv
-        gate.pulse_begins(throw.junction)
+        throw.mv = mean_mv
+        gate.pulse_begins(throw.junction, mean_mv)
         throw.state = THROW_PULSE
         throw.fired = True
         throw.bank = plan.bank
@@ -146,12 +146,13 @@ class Firing:
         throw.cohm = plan.cohm
         throw.motor_place = plan.place
         self._on_bank[plan.bank] = throw
+        self.running += 1
         self._move_motors(throw, now_ms)
         run = throw.route
         if run is not None:
             run.paused = True
             run.pulse_ms = now_ms
-        self._throws.changed = True
+        self._throws.stir()
         values = self._outbox.plain(messages.PULSE)
         values[0] = plan.bank
         values[1] = throw.junction
@@ -179,6 +180,17 @@ class Firing:
 
     def judge(self, now_ms: int) -> None:
         """Judge pulses that are over, and contacts that had time to answer."""
+        if self.running:
+            self._judge_pulses(now_ms)
+        if self.answering and now_ms != self._answers_ms:
+            self._answers_ms = now_ms
+            place = 0
+            while place < self._throws.count:
+                throw = self._throws.order[place]
+                if throw.state != THROW_ANSWER or not self._judge_answer(throw, now_ms):
+                    place += 1
+
+    def _judge_pulses(self, now_ms: int) -> None:
         for bank in range(len(self._on_bank)):
             throw = self._on_bank[bank]
             if throw is None:
@@ -189,13 +201,8 @@ class Firing:
             late_ms = elapsed(now_ms, throw.pulse_ms) - throw.width_us // 1000
             if gate.fresh or late_ms >= JUDGE_ANYWAY_MS:
                 self._on_bank[bank] = None
+                self.running -= 1
                 self._judge_drop(throw, now_ms)
-        if self.answering:
-            place = 0
-            while place < self._throws.count:
-                throw = self._throws.order[place]
-                if throw.state != THROW_ANSWER or not self._judge_answer(throw, now_ms):
-                    place += 1
 
     def _judge_drop(self, throw: Throw, now_ms: int) -> None:
         gate = self._plant.banks[throw.bank]
@@ -357,7 +364,7 @@ class Firing:
         throw.begun_ms = now_ms
         throw.limit_ms = self._plant.timing.wait_ms
         self.aim(throw)
-        self._throws.changed = True
+        self._throws.stir()
 
     def _no_answer(self, throw: Throw, now_ms: int) -> None:
         junction = self._plant.junctions[throw.junction]

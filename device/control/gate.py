@@ -5,7 +5,7 @@ shown to people has hysteresis, so that noise at the threshold does not make it 
 """
 
 from device.control import recharge
-from device.control.ticks import Marks
+from device.control.ticks import Changes, Marks
 from shared_protocol.settings import BankSettings, Settings
 from shared_protocol.words import (
     BANK_CHARGING,
@@ -25,12 +25,13 @@ _SINCE_FRESH = 0
 
 
 class BankGate:
-    """One bank. `update` once a tick, before anything asks."""
+    """One bank. `look` before anything asks; `update` once a millisecond."""
 
-    def __init__(self, number: int, settings: Settings, board: "Board") -> None:
+    def __init__(self, number: int, settings: Settings, board: "Board", changes: Changes) -> None:
         self.number = number
         self.settings: "BankSettings" = settings.banks[number]
         self._board = board
+        self._changes = changes
         self._hysteresis_mv = settings.timing.hysteresis_mv if settings.timing else 0
         self._marks = Marks(1)
         self.top_ready_mv = top_ready_mv(settings, number)
@@ -47,36 +48,42 @@ class BankGate:
         self.before_mv = -1
         self.lowest_mv = -1
         self.last_junction = -1
-        self.ended = False
+
+    def look(self) -> None:
+        """Read the board: what a decision needs, and no more. Called in every tick in which the bank matters."""
+        board = self._board
+        number = self.number
+        if self.running and not board.pulse_running(number):
+            self.running = False
+            self._changes.happened = True
+        low_mv = board.bank_low_mv(number)
+        self.low_mv = low_mv
+        self.fresh = low_mv >= 0 and not self.running
+        self.plausible = low_mv <= self._most_mv
+        if self.before_mv >= 0:
+            last_mv = board.bank_last_mv(number)
+            if 0 <= last_mv < self.lowest_mv:
+                self.lowest_mv = last_mv
 
     def update(self, now_ms: int) -> None:
-        """Read the board."""
-        board = self._board
-        running = board.pulse_running(self.number)
-        self.ended = self.running and not running
-        self.running = running
-        self.low_mv = board.bank_low_mv(self.number)
-        self.fresh = self.low_mv >= 0 and not running
-        self.plausible = self.low_mv <= self._most_mv
+        """Look, and keep what is shown to people."""
+        self.look()
         if self.fresh:
-            self.mean_mv = board.bank_mean_mv(self.number)
+            self.mean_mv = self._board.bank_mean_mv(self.number)
             self._marks.set(_SINCE_FRESH, now_ms)
             if self.low_mv >= self.top_ready_mv:
                 self._shown_ready = True
             elif self.low_mv < self.top_ready_mv - self._hysteresis_mv:
                 self._shown_ready = False
-        if self.before_mv >= 0:
-            last_mv = board.bank_last_mv(self.number)
-            if 0 <= last_mv < self.lowest_mv:
-                self.lowest_mv = last_mv
         self._marks.sweep(now_ms)
 
-    def pulse_begins(self, junction: int) -> None:
-        """A pulse has just been started."""
+    def pulse_begins(self, junction: int, mean_mv: int) -> None:
+        """A pulse has just been started on a bank that held `mean_mv`."""
         self.running = True
         self.fresh = False
-        self.before_mv = self.mean_mv
-        self.lowest_mv = self.mean_mv
+        self.mean_mv = mean_mv
+        self.before_mv = mean_mv
+        self.lowest_mv = mean_mv
         self.last_junction = junction
         self._shown_ready = False
 

@@ -2,6 +2,7 @@
 
 from device.control.motors import UNKNOWN, MotorState
 from device.control.outbox import Outbox
+from device.control.ticks import Changes
 from shared_protocol import messages
 from shared_protocol.settings import JunctionSettings
 from shared_protocol.words import SEEN, SENT, SOURCE_NONE
@@ -12,8 +13,11 @@ LIE_UNKNOWN = -1
 class JunctionState:
     """One junction."""
 
-    def __init__(self, settings: JunctionSettings, motors: "list[MotorState]", outbox: Outbox) -> None:
+    def __init__(
+        self, settings: JunctionSettings, motors: "list[MotorState]", outbox: Outbox, changes: Changes
+    ) -> None:
         self.settings = settings
+        self._changes = changes
         self.number = settings.i
         self.motors = motors
         for motor in motors:
@@ -29,6 +33,7 @@ class JunctionState:
 
     def refresh(self) -> bool:
         """Work the lie out again; tells the host and returns True if it has changed."""
+        self._changes.happened = True
         lie = LIE_UNKNOWN
         source = SEEN
         at = 0

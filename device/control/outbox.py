@@ -9,6 +9,10 @@ from shared_protocol.fields import Message
 from shared_protocol.line import LineWriter
 from shared_protocol.messages import ALIVE
 
+TYPE_CHECKING = False
+if TYPE_CHECKING:
+    from device.board.seam import Board
+
 KEPT = 40
 PLAIN = 40
 FOR_ANSWERS = 16
@@ -131,31 +135,36 @@ class Outbox:
         """True if the line is idle: nothing half sent, no raw body waiting."""
         return self._length == 0 and len(self._raw) == 0
 
-    def take_byte(self) -> int:
-        """The next byte to send, -1 if there is none. Call `byte_sent` when the board took it."""
+    def send(self, board: "Board", most: int) -> bool:
+        """Give at most `most` bytes to the board. True if no more can go now: a line ended, or it takes no more."""
         if self._length == 0:
             if not self.open or not self._next_line():
-                return -1
+                return True
             self._place = 0
             self._crc.reset()
         place = self._place
         length = self._length
-        if place < length:
-            return self._body[place]
-        if place == length:
-            return _STAR
-        if place <= length + 8:
-            return self._crc.digit(place - length - 1)
-        return _NEWLINE
-
-    def byte_sent(self) -> None:
-        """The byte from `take_byte` is on its way."""
-        place = self._place
-        if place < self._length:
-            self._crc.add(self._body[place])
-        self._place = place + 1
-        if place > self._length + 8:
-            self._length = 0
+        while most > 0:
+            if place < length:
+                byte = self._body[place]
+            elif place == length:
+                byte = _STAR
+            elif place <= length + 8:
+                byte = self._crc.digit(place - length - 1)
+            else:
+                byte = _NEWLINE
+            if not board.write_byte(byte):
+                self._place = place
+                return True
+            if place < length:
+                self._crc.add(byte)
+            place += 1
+            most -= 1
+            if byte == _NEWLINE:
+                self._length = 0
+                return True
+        self._place = place
+        return False
 
     def tick(self, now_ms: int) -> None:
         """Ask again for acknowledgement when it is due."""

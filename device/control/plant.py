@@ -6,6 +6,7 @@ from device.control.junctions import JunctionState
 from device.control.motors import Motors
 from device.control.outbox import Outbox
 from device.control.pulses import AllowedPulses
+from device.control.ticks import Changes
 from device.control.watch import BankWatch
 from shared_protocol.settings import Settings, TimingSettings
 from shared_protocol.words import SOURCE_NONE
@@ -27,12 +28,15 @@ class Plant:
         self.route_order = settings.board.order
         self.restore = settings.board.restore
         self.stopped = False
-        self.faults = FaultBook(len(settings.banks), len(settings.junctions), len(settings.buttons), outbox)
-        self.banks = [BankGate(number, settings, board) for number in range(len(settings.banks))]
+        self.changes = Changes()
+        self.faults = FaultBook(
+            len(settings.banks), len(settings.junctions), len(settings.buttons), outbox, self.changes
+        )
+        self.banks = [BankGate(number, settings, board, self.changes) for number in range(len(settings.banks))]
         self.watches = [BankWatch(gate, self.faults) for gate in self.banks]
         self.motors = Motors(settings, board)
         self.junctions = [
-            JunctionState(junction, [self.motors.all[motor] for motor in junction.motors], outbox)
+            JunctionState(junction, [self.motors.all[motor] for motor in junction.motors], outbox, self.changes)
             for junction in settings.junctions
         ]
         self.allowed = [AllowedPulses(settings, number) for number in range(len(settings.banks))]

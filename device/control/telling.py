@@ -3,6 +3,7 @@
 from device.control.outbox import Outbox
 from device.control.plant import Plant
 from device.control.queue import Queue
+from device.control.throws import Throw
 from device.control.ticks import LONG_AGO, Marks
 from shared_protocol import messages
 from shared_protocol.words import THROW_WAITING
@@ -15,6 +16,7 @@ _BANKS, _EXPECT, _SECOND = 0, 1, 2
 EXPECT_MS = 500
 EXPECT_SOON_MS = 200
 _NOT_TELLING = -1
+_NOTHING = -1
 
 
 class Teller:
@@ -29,6 +31,9 @@ class Teller:
         self._lines = self._no_lines
         self._line = 0
         self._sending = False
+        # Of the telemetry that is being sent: the next bank, the next throw.
+        self._next_bank = _NOTHING
+        self._next_throw = _NOTHING
         self.up_s = 0
         self.bad_lines = 0
 
@@ -63,6 +68,11 @@ class Teller:
         """True while a long answer is on its way."""
         return self._place != _NOT_TELLING or self._sending
 
+    @property
+    def telemetry(self) -> bool:
+        """True while lines of telemetry are still to come."""
+        return self._next_bank >= 0 or self._next_throw >= 0
+
     def send_settings(self) -> None:
         """Hand the next record to the outbox if it is idle. Allocates nothing; the lines are there."""
         if not self._outbox.quiet:
@@ -77,7 +87,7 @@ class Teller:
         values[0] = messages.ASK_SETTINGS
 
     def tick(self, plant: "Plant | None", queue: "Queue | None", now_ms: int) -> None:
-        """Go on with a status; send telemetry when it is due."""
+        """Go on with a status; begin telemetry when it is due."""
         if self._place != _NOT_TELLING:
             if self._outbox.has_room():
                 self._tell_next(plant, queue, now_ms)
@@ -86,22 +96,43 @@ class Teller:
             return
         if self._marks.since(_BANKS, now_ms) >= plant.tell_ms:
             self._marks.set(_BANKS, now_ms)
-            for number in range(len(plant.banks)):
-                if self._fits():
-                    self._tell_bank(plant, number, now_ms)
-            if self._fits():
-                self._tell_state(plant, queue)
-        if queue.throws.count:
-            self._tell_queue(queue, now_ms)
+            self._next_bank = 0
+        if self._next_bank >= 0:
+            self._tell_one_bank(plant, queue, now_ms)
+        elif self._next_throw >= 0:
+            self._tell_one_throw(queue, now_ms)
+        elif queue.throws.count:
+            since_ms = self._marks.since(_EXPECT, now_ms)
+            if since_ms >= EXPECT_MS or (queue.throws.changed and since_ms >= EXPECT_SOON_MS):
+                queue.throws.changed = False
+                self._marks.set(_EXPECT, now_ms)
+                queue.forecast.begin(now_ms)
+                self._next_throw = 0
 
-    def _tell_queue(self, queue: Queue, now_ms: int) -> None:
-        since_ms = self._marks.since(_EXPECT, now_ms)
-        if since_ms >= EXPECT_MS or (queue.throws.changed and since_ms >= EXPECT_SOON_MS):
-            queue.throws.changed = False
-            self._marks.set(_EXPECT, now_ms)
-            for place in range(queue.throws.count):
-                if self._fits():
-                    self._tell_expect(queue, place, now_ms)
+    def _tell_one_bank(self, plant: Plant, queue: Queue, now_ms: int) -> None:
+        """One line of telemetry: a bank's, after the last bank the board's."""
+        number = self._next_bank
+        self._next_bank = number + 1
+        if not self._fits():
+            self._next_bank = _NOTHING
+            return
+        if number < len(plant.banks):
+            self._tell_bank(plant, number, now_ms)
+            return
+        self._next_bank = _NOTHING
+        self._tell_state(plant, queue)
+
+    def _tell_one_throw(self, queue: Queue, now_ms: int) -> None:
+        """One line of what the queue expects."""
+        place = self._next_throw
+        if place >= queue.throws.count:
+            self._next_throw = _NOTHING
+            return
+        self._next_throw = place + 1
+        throw = queue.throws.order[place]
+        due_ms = queue.forecast.add(throw, now_ms) if throw.state == THROW_WAITING else 0
+        if self._fits():
+            self._tell_expect(throw, due_ms)
 
     def _fits(self) -> bool:
         """True if there is room for telemetry; counts what is dropped."""
@@ -135,7 +166,8 @@ class Teller:
                 return
             place -= len(plant.junctions)
             if place < queue.throws.count:
-                self._tell_expect(queue, place, now_ms)
+                throw = queue.throws.order[place]
+                self._tell_expect(throw, queue.forecast.of(throw, now_ms) if throw.state == THROW_WAITING else 0)
                 return
             self._tell_faults(plant)
         self._place = _NOT_TELLING
@@ -169,8 +201,7 @@ class Teller:
         values[5] = self._board.inputs(0)
         values[6] = self._board.inputs(1)
 
-    def _tell_expect(self, queue: Queue, place: int, now_ms: int) -> None:
-        throw = queue.throws.order[place]
+    def _tell_expect(self, throw: Throw, due_ms: int) -> None:
         values = self._outbox.plain(messages.EXPECT)
         values[0] = throw.id
         values[1] = throw.step
@@ -178,4 +209,4 @@ class Teller:
         values[3] = throw.lie
         values[4] = throw.origin
         values[5] = throw.state
-        values[6] = queue.estimate_ms(throw, now_ms) if throw.state == THROW_WAITING else 0
+        values[6] = due_ms

@@ -83,6 +83,11 @@ class Throws:
         self._runs = [RouteRun() for _ in range(ROUTES)]
         self.changed = False
 
+    def stir(self) -> None:
+        """Something has changed: tell the host, and look at all throws again."""
+        self.changed = True
+        self._plant.changes.happened = True
+
     def free(self) -> int:
         """How many slots are free."""
         return THROWS - self.count
@@ -128,7 +133,7 @@ class Throws:
         state = self._plant.junctions[junction]
         state.waiting += 1
         state.wanted = lie
-        self.changed = True
+        self.stir()
         return throw
 
     def finish(self, throw: Throw, outcome: int, why: int, which: int, ms: int) -> None:
@@ -251,7 +256,7 @@ class Throws:
 
     def _free(self, throw: Throw) -> None:
         throw.state = FREE
-        self.changed = True
+        self.stir()
         place = 0
         while self.order[place] is not throw:
             place += 1

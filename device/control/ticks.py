@@ -24,7 +24,16 @@ def elapsed(now: int, then: int) -> int:
 
 def later(now: int, by: int) -> int:
     """The tick `by` (0 to a quarter period) after `now`."""
-    return (now + by) & MASK
+    # Without the sum, which could leave the small integers before it is masked.
+    left = MASK - now
+    return now + by if by <= left else by - left - 1
+
+
+class Changes:
+    """One for a plant: `happened` tells the queue to look at every throw again, not only at voltages."""
+
+    def __init__(self) -> None:
+        self.happened = True
 
 
 class Marks:

@@ -194,7 +194,8 @@ class BankBuilder:
         self._records.add(
             wire.SET_BANK, ("bank", number), i=number, name=plain_name(bank["name"], 16),
             pin=bank.get("first_pin", -1), coils=bank["coils"], chain=bank.get("chain_pins", []), adc=bank["adc"],
-            range_mv=millivolts(bank.get("sense_range_v", 33.0)), full_mv=millivolts(bank["full_v"]),
+            range_mv=millivolts(bank.get("sense_range_v", 33.0)), zero_mv=millivolts(bank.get("sense_zero_v", 0.0)),
+            full_mv=millivolts(bank["full_v"]),
             peak_mv=millivolts(self.peak_v()), gap_ms=bank.get("gap_ms", 20), switch=bank.get("switch", "low"),
         )  # fmt: skip
 

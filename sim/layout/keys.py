@@ -88,6 +88,7 @@ BANK = (
     Key("coils", "whole", "Number of coil outputs (13 at most on pins).", REQUIRED, 1, wire.COILS_ON_CHAIN),
     Key("adc", "whole", "ADC input of its voltage sense (0 is pin 26).", REQUIRED, 0, 2),
     Key("sense_range_v", "number", "Bank voltage at the highest ADC reading: set by the divider.", 33.0, 5, 40, "V"),
+    Key("sense_zero_v", "number", "Added to every reading: what the sense reads too little at 0 V.", 0.0, -1, 1, "V"),
     Key("full_v", "number", "Voltage of the full bank; else what supply and bleed make it.", None, 3, 33, "V"),
     Key("gap_ms", "whole", "Shortest time between two pulses of this bank.", 20, 5, 60, "ms"),
     Key("switch", "word", "Which side of the coil the driver switches.", "low", words=wire.SWITCH_SIDES),

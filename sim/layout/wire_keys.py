@@ -21,8 +21,8 @@ _OTHER_NAMES: dict[str, dict[str, str]] = {
         "outputs": "output_pins", "out_chain": "outputs_on_chain", "out_pins": "output_chain_pins",
     },
     "set_bank": {
-        "i": "", "pin": "first_pin", "chain": "chain_pins", "range_mv": "sense_range_v", "full_mv": "full_v",
-        "peak_mv": "peak_v",
+        "i": "", "pin": "first_pin", "chain": "chain_pins", "range_mv": "sense_range_v", "zero_mv": "sense_zero_v",
+        "full_mv": "full_v", "peak_mv": "peak_v",
     },
     "set_charge": {
         "i": "", "kind": "charge", "cap_uf": "capacitance_uf", "charge_dohm": "charge_ohm", "rated_mw": "resistor_w",

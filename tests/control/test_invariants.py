@@ -127,7 +127,10 @@ class Machine(RuleBasedStateMachine):
 
     @rule()
     def host_lost(self) -> None:
+        # A host that acknowledges is there.
+        self.bench.acknowledge = False
         self.let_pass(3200)
+        self.bench.acknowledge = True
         count = self.bench.controller.queue.throws.count  # type: ignore[union-attr]
         throws = self.bench.controller.queue.throws.order[:count]  # type: ignore[union-attr]
         assert not [throw for throw in throws if throw.origin == 0 and throw.state == 0]

@@ -47,6 +47,7 @@ first_pin = 0
 coils = 6
 adc = 2
 sense_range_v = 28.0
+sense_zero_v = -0.07
 full_v = 17.5
 gap_ms = 27
 switch = "high"
@@ -129,10 +130,10 @@ RECORDS: dict[str, list[dict[str, object]]] = {
         "out_pins": [12, 13, 14],
     }],
     "set_bank": [
-        {"i": 0, "name": "First", "pin": 0, "coils": 6, "chain": [], "adc": 2, "range_mv": 28_000, "full_mv": 17_500,
-         "peak_mv": 18_500, "gap_ms": 27, "switch": "high"},
+        {"i": 0, "name": "First", "pin": 0, "coils": 6, "chain": [], "adc": 2, "range_mv": 28_000, "zero_mv": -70,
+         "full_mv": 17_500, "peak_mv": 18_500, "gap_ms": 27, "switch": "high"},
         {"i": 1, "name": "Second", "pin": -1, "coils": 27, "chain": [16, 17], "adc": 1, "range_mv": 33_000,
-         "full_mv": 16_800, "peak_mv": 18_500, "gap_ms": 20, "switch": "low"},
+         "zero_mv": 0, "full_mv": 16_800, "peak_mv": 18_500, "gap_ms": 20, "switch": "low"},
     ],
     "set_charge": [
         {"i": 0, "kind": "limited", "cap_uf": 3300, "charge_dohm": 567, "limit_ma": 270, "guard": "cutoff",

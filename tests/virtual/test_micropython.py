@@ -41,11 +41,11 @@ def run_changed(scenario: Scenario, interpreter: Interpreter, old: str, new: str
         board.run(engine)
 
 
-FEED = "        board.feed_watchdog()\n"
+FEED = "        self.board.feed_watchdog()\n"
 
 
 @pytest.mark.parametrize(
-    "allocates", ["[1, 2]", "board.read_byte", "'%d' % now_ms", "(now_ms + 3) << 30", "(now_ms, 1)"]
+    "allocates", ["[1, 2]", "self.board.read_byte", "'%d' % now_ms", "(now_ms + 3) << 30", "(now_ms, 1)"]
 )
 def test_a_tick_that_allocates_dies_and_says_where(
     allocates: str, scenario: Scenario, interpreter: Interpreter
