@@ -1,7 +1,26 @@
 """Chooses the board, makes the controller, loops. The only file that works at import time, and only as the program."""
 
-from device.board.seam import Board
-from device.control.controller import Controller
+import gc
+import sys
+
+# Garbage that is left between modules and records breaks a small memory into pieces: while loading, it is collected
+# each time so many bytes were taken. Afterwards the loop collects.
+WHILE_IMPORTING = 8192
+WHILE_LOADING = 16_384
+NEVER = -1
+
+
+def collect_each(taken: int) -> None:
+    """Where memory is small, collect garbage each time so many bytes were taken."""
+    if sys.platform == "rp2":
+        gc.threshold(taken)  # type: ignore[attr-defined,unused-ignore]
+
+
+if __name__ == "__main__":
+    collect_each(WHILE_IMPORTING)
+
+from device.board.seam import Board  # noqa: E402
+from device.control.controller import Controller  # noqa: E402
 
 
 def choose_board() -> Board:
@@ -25,13 +44,28 @@ def step(board: Board, controller: Controller) -> None:
         controller.collected()
 
 
-def main() -> None:
+def loop(board: Board) -> None:
     """Run until the firmware is told to leave."""
-    board = choose_board()
+    collect_each(WHILE_LOADING)
     controller = Controller(board)
     controller.start()
+    collect_each(NEVER)
+    board.begin()
     while not controller.left:
         step(board, controller)
+    board.end()
+
+
+def main() -> None:
+    """Run the loop; what goes wrong in it is noted, and the board starts again with everything off."""
+    board = choose_board()
+    if board.stay_at_prompt:
+        return
+    try:
+        loop(board)
+    except Exception as error:
+        board.crashed(error)
+        raise
 
 
 if __name__ == "__main__":

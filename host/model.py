@@ -107,6 +107,23 @@ class LayoutModel:
         return sorted(self.fault_facts.values(), key=lambda fault: (order.get(fault.scope, 3), fault.number))
 
     @property
+    def several(self) -> bool:
+        """True if there is more than one board: only then boards are named."""
+        return False
+
+    @property
+    def boards(self) -> list[BoardView]:
+        """The boards that are there."""
+        return [self.board] if self.board is not None else []
+
+    @property
+    def title(self) -> str:
+        """What the layout is called, as far as it is known."""
+        if self.settings is None or self.settings.board is None:
+            return "no layout"
+        return self.settings.board.name.decode() or "layout without a name"
+
+    @property
     def settings_match(self) -> bool | None:
         """True if the board holds the layout file's settings; None if there is nothing to compare."""
         if self.board is None or not self.layout_crc:

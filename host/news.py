@@ -62,9 +62,9 @@ def _answers(model: "LayoutModel", received: Received, at_s: float) -> None:
             model.end_of_settings(at_s)
 
 
-def _board(model: "LayoutModel", received: Received, at_s: float) -> None:
-    before = model.board
-    now = BoardView(
+def board_of(received: Received) -> BoardView:
+    """Who a board says that it is."""
+    return BoardView(
         received.name("kind"),
         received.name("uid"),
         received.name("fw"),
@@ -73,6 +73,10 @@ def _board(model: "LayoutModel", received: Received, at_s: float) -> None:
         received.number("v"),
         received.name("caps"),
     )
+
+
+def _board(model: "LayoutModel", received: Received, at_s: float) -> None:
+    before, now = model.board, board_of(received)
     model.board = now
     if before is None or (before.boot, before.uid) != (now.boot, now.uid):
         if before is not None:

@@ -3,8 +3,10 @@
 import queue
 import time
 from collections.abc import Callable
+from dataclasses import dataclass
+from typing import Protocol
 
-from host.link import Link, LinkChange
+from host.link import LinkChange, News
 from host.link_errors import LinkError, NoAnswer
 from host.model import LayoutModel, Records
 from host.requests import Flight, Flights
@@ -34,6 +36,46 @@ def first_id(wall_s: float) -> int:
     return int(wall_s * 10) % (INT_MAX - 100_000_000) + 1
 
 
+class LinkLike(Protocol):
+    """What a session needs of a link: host.link.Link has it, and a board's seat in host.seats."""
+
+    @property
+    def port(self) -> str:
+        """Where the board is."""
+
+    @property
+    def error(self) -> LinkError | None:
+        """Why there is no connection; None while there is one, or none was tried."""
+
+    @property
+    def received(self) -> queue.Queue[News]:
+        """What came in."""
+
+    @property
+    def connected(self) -> bool:
+        """True between the first exchange and the loss of the link."""
+
+    def open(self) -> None:
+        """Begin to connect."""
+
+    def send(self, message: Message, values: list[object]) -> bool:
+        """Write one message now; False if the link is down: nothing is kept for later."""
+
+
+@dataclass(frozen=True)
+class Part:
+    """One board of what a person works on. junctions, banks: the numbers that people know its own ones by.
+
+    name: '' where there is only one board. spare: another board has taken its place.
+    """
+
+    name: str
+    session: "Session"
+    junctions: tuple[int, ...]
+    banks: tuple[int, ...]
+    spare: bool = False
+
+
 class Session:
     """One link, one model. Call `poll` often (or `wait_for`); everything happens in the caller's thread.
 
@@ -42,7 +84,7 @@ class Session:
 
     def __init__(
         self,
-        link: Link,
+        link: LinkLike,
         model: LayoutModel,
         clock: Callable[[], float] = time.monotonic,
         first: int | None = None,
@@ -94,6 +136,20 @@ class Session:
             except queue.Empty:
                 continue
             self._take(item)
+
+    def open(self) -> None:
+        """Begin to connect."""
+        self.link.open()
+
+    @property
+    def error(self) -> LinkError | None:
+        """Why there is no connection; None while there is one, or none was tried."""
+        return self.link.error
+
+    @property
+    def all_told(self) -> bool:
+        """True if it is known why there is no connection: then waiting helps no more."""
+        return self.link.error is not None
 
     def connect(self, timeout_s: float = 8.0) -> None:
         """Wait until the board has told its status. Raises LinkError: why there is no board."""
@@ -213,15 +269,18 @@ class Session:
 
     # ---- requests
 
-    def throw(self, junction: int, lie: int, wait_ms: int = 0) -> int:
-        """Ask once for one throw; 0 ms: now or not at all. Returns its number: see `outcome_of`."""
-        flight = Flight(self._new_id(), "throw", junction, lie, -1, self.clock())
+    def throw(self, junction: int, lie: int, wait_ms: int = 0, number: int = 0) -> int:
+        """Ask once for one throw; 0 ms: now or not at all. Returns its number: see `outcome_of`.
+
+        number: the number it is to have, from who sees to it that numbers grow; 0: the session's next.
+        """
+        flight = Flight(self._new_id(number), "throw", junction, lie, -1, self.clock())
         return self._fly(flight, messages.THROW, [self._boot, flight.id, junction, lie, wait_ms])
 
-    def route(self, number: int, wait_ms: int = 0) -> int:
-        """Ask once for a route; the wait is for each throw. Returns its number."""
-        flight = Flight(self._new_id(), "route", -1, -1, number, self.clock())
-        return self._fly(flight, messages.ROUTE, [self._boot, flight.id, number, wait_ms])
+    def route(self, route: int, wait_ms: int = 0, number: int = 0) -> int:
+        """Ask once for a route; the wait is for each throw. Returns its number; `number` as for a throw."""
+        flight = Flight(self._new_id(number), "route", -1, -1, route, self.clock())
+        return self._fly(flight, messages.ROUTE, [self._boot, flight.id, route, wait_ms])
 
     def cancel(self, number: int) -> bool:
         """Cancel the request `number`, as far as it has not fired. False if there is no connection."""
@@ -283,7 +342,22 @@ class Session:
     def _with_boot(self, message: Message, values: list[object]) -> bool:
         return bool(self._boot) and self.link.send(message, [self._boot, *values])
 
-    def _new_id(self) -> int:
-        number = max(self._next, self.model.highest_id + 1)
+    @property
+    def parts(self) -> list[Part]:
+        """The only board."""
+        return [Part("", self, tuple(range(len(self.model.junctions))), tuple(range(len(self.model.banks))))]
+
+    @property
+    def unreached(self) -> str:
+        """Nothing to say: whether the only board is reached, each request tells."""
+        return ""
+
+    @property
+    def next_id(self) -> int:
+        """The least number that a further request may have."""
+        return max(self._next, self.model.highest_id + 1)
+
+    def _new_id(self, wanted: int) -> int:
+        number = max(wanted, self.next_id)
         self._next = number + 1
         return number

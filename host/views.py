@@ -36,7 +36,10 @@ class FaultView:
 
 @dataclass
 class JunctionView:
-    """A junction. `lie` is -1 while unknown; `source` is 'none', 'sent' or 'seen'; `waiting`: it is in the queue."""
+    """A junction. `lie` is -1 while unknown; `source` is 'none', 'sent' or 'seen'; `waiting`: it is in the queue.
+
+    lost: its board is not there, while others are: what is known of it is as last told.
+    """
 
     number: int
     name: str
@@ -48,6 +51,7 @@ class JunctionView:
     fault: FaultView | None = None
     waiting: bool = False
     heard_at_s: float | None = None
+    lost: bool = False
 
     @property
     def word(self) -> str:
@@ -61,7 +65,10 @@ class JunctionView:
 
 @dataclass
 class BankView:
-    """A bank. mv -1: unknown; age_ms: age of the reading when it was sent; ready_ms -1: can't be told."""
+    """A bank. mv -1: unknown; age_ms: age of the reading when it was sent; ready_ms -1: can't be told.
+
+    lost: the name of its board, if that is not there while others are.
+    """
 
     number: int
     name: str
@@ -72,11 +79,15 @@ class BankView:
     ready_ms: int = -1
     fault: FaultView | None = None
     heard_at_s: float | None = None
+    lost: str = ""
 
 
 @dataclass
 class QueueItem:
-    """A throw that the board has accepted and not finished. due_ms -1: can't be told; 0: now."""
+    """A throw that the board has accepted and not finished. due_ms -1: can't be told; 0: now.
+
+    board: its board's name, where there are several.
+    """
 
     id: int
     step: int
@@ -86,6 +97,7 @@ class QueueItem:
     state: str
     due_ms: int
     heard_at_s: float
+    board: str = ""
 
 
 @dataclass

@@ -1,7 +1,8 @@
 """Messages in plain words, from the shared tables of reasons and faults."""
 
 from host.views import FaultView, GoLine, Names, OutcomeView
-from shared_protocol.words import FAULT_TEXTS, FAULTS, REASON_REMEDIES, REASON_TEXTS, REASONS
+from shared_protocol.sentences import FAULT_TEXTS, REASON_REMEDIES, REASON_TEXTS
+from shared_protocol.words import FAULTS, REASONS
 
 # What `which` of an outcome means, by reason; a reason that is not here names nothing.
 _BANK_REASONS = ("below_ready", "gap", "pulse_running", "stale", "bank_out", "longest_wait")

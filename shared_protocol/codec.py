@@ -1,7 +1,7 @@
 """Whole messages to and from whole lines, for the host and for tests: may allocate."""
 
 from shared_protocol.crc import Crc32, CrcTables
-from shared_protocol.fields import INTS, NAME, WORD, Message, value_fits
+from shared_protocol.fields import INTS, NAME, WORD, Message
 from shared_protocol.line import FAULTS_OF_LINES, GOOD, LineDecoder, LineWriter
 from shared_protocol.reader import BAD_LINE, LINE, LONG_LINE, NOTHING, LineReader
 
@@ -33,7 +33,7 @@ class Received:
     def word(self, key: str) -> str:
         """The word of a word field."""
         assert self.message is not None
-        return self.message.fields[self.message.position(key)].words[self.number(key)]
+        return self.message.words[self.message.position(key)][self.number(key)]
 
     def name(self, key: str) -> str:
         """The text of a name field."""
@@ -59,13 +59,11 @@ class Codec:
 
     def body(self, message: Message, values: "list[object]") -> bytes:
         """The JSON alone. Raises ValueOutOfTable."""
-        if len(values) != len(message.fields):
-            raise ValueOutOfTable("%s: %d fields" % (message.name, len(message.fields)))
-        position = 0
-        for field in message.fields:
-            if not value_fits(field, values[position]):
-                raise ValueOutOfTable("%s: %s" % (message.name, field.key))
-            position += 1
+        if len(values) != len(message.keys):
+            raise ValueOutOfTable("%s: %d fields" % (message.name, len(message.keys)))
+        for position in range(len(message.keys)):
+            if not message.fits(position, values[position]):
+                raise ValueOutOfTable("%s: %s" % (message.name, message.keys[position]))
         length = self._writer.write(message, values)
         if length == 0:
             raise ValueOutOfTable("%s: too long" % message.name)

@@ -4,6 +4,8 @@ binascii.crc32 returns up to 32 bits, which MicroPython can only hold by allocat
 a byte at a time spreads the work over ticks. Tests hold it against binascii and published check values.
 """
 
+from binascii import crc32
+
 HEX = b"0123456789ABCDEF"
 
 
@@ -56,3 +58,13 @@ class Crc32:
     def text(self) -> bytes:
         """All eight digits. Allocates: not for the steady loop."""
         return bytes([self.digit(place) for place in range(8)])
+
+
+def crc_of(data: bytes, before: int = 0) -> int:
+    """The sum of many bytes at once, going on from an earlier one: what Crc32 makes of them. Allocates."""
+    return crc32(data, before)
+
+
+def crc_text(crc: int) -> bytes:
+    """Eight hex digits of a sum from `crc_of`. Allocates."""
+    return b"%08X" % crc

@@ -6,7 +6,7 @@ is checked against the table, written again and compared, so nothing that a lax 
 
 import json
 
-from shared_protocol.fields import INT, INTS, NAME, WORD, Message, value_fits
+from shared_protocol.fields import INT, INTS, NAME, WORD, Message
 
 LINE_MAX = 240
 BODY_MAX = LINE_MAX - 10  # '*', eight digits, newline
@@ -37,16 +37,17 @@ class LineWriter:
     def write(self, message: Message, values: "list[object]") -> int:
         """Write `message` with `values` (in table order, see fields.Field). Returns the length, 0 if too long."""
         self.length = 0
-        fits = self._bytes(message.prefix)
+        # What a board sends is prepared; what it only reads is put together here, for the comparison (that allocates).
+        prefixes = message.prefixes
+        fits = self._bytes(prefixes[0] if prefixes else message.begin())
         position = 0
-        for field in message.fields:
+        for kind in message.kinds:
             value = values[position]
-            kind = field.kind
-            fits = fits and self._bytes(field.prefix)
+            fits = fits and self._bytes(prefixes[position + 1] if prefixes else message.lead(position))
             if kind == INT:
                 fits = fits and self._int(value)  # type: ignore[arg-type]
             elif kind == WORD:
-                fits = fits and self._bytes(field.word_bytes[value])  # type: ignore[call-overload]
+                fits = fits and self._word(message, position, value)  # type: ignore[arg-type]
             elif kind == NAME:
                 fits = fits and self._byte(34) and self._bytes(value) and self._byte(34)  # type: ignore[arg-type]
             else:
@@ -55,6 +56,11 @@ class LineWriter:
         if not (fits and self._byte(125)):
             self.length = 0
         return self.length
+
+    def _word(self, message: Message, position: int, number: int) -> bool:
+        if message.quoted:
+            return self._bytes(message.quoted[position][number])
+        return self._byte(34) and self._bytes(message.words[position][number].encode()) and self._byte(34)
 
     def _byte(self, byte: int) -> bool:
         if self.length >= BODY_MAX:
@@ -136,12 +142,14 @@ class LineDecoder:
         message = self._messages.get(name) if isinstance(name, str) else None
         if message is None:
             return Decoded(UNKNOWN_MESSAGE, None, [])
-        if len(read) != len(message.fields) + 1:
+        if len(read) != len(message.keys) + 1:
             return Decoded(BAD_FIELDS, message, [])
         values: "list[object]" = []
-        for field in message.fields:
-            value = in_memory(field.kind, field.words, read.get(field.key))
-            if not value_fits(field, value):
+        for position in range(len(message.keys)):
+            kind = message.kinds[position]
+            words = message.words[position] if kind == WORD else ()
+            value = in_memory(kind, words, read.get(message.keys[position]))
+            if not message.fits(position, value):
                 return Decoded(BAD_FIELDS, message, [])
             values.append(value)
         length = self._writer.write(message, values)

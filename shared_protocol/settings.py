@@ -4,7 +4,7 @@ Attribute names are the field keys of the table. The board runs on these; the ho
 """
 
 from shared_protocol import settings_table as table
-from shared_protocol.fields import INTS, KEEPS_TEXTS, NAME, Message
+from shared_protocol.fields import INTS, KEEPS_FIELDS, NAME, Message
 
 
 class Record:
@@ -15,16 +15,15 @@ class Record:
 
         A board leaves the names out: it decides nothing by them, and its slot keeps them for whoever asks.
         """
-        position = 0
-        for field in message.fields:
+        for position in range(len(message.keys)):
             value = values[position]
-            position += 1
-            if field.kind == INTS:
+            kind = message.kinds[position]
+            if kind == INTS:
                 if value not in lists:
                     lists.append(value)  # type: ignore[arg-type]
                 value = lists[lists.index(value)]  # type: ignore[arg-type]
-            if field.kind != NAME or KEEPS_TEXTS:
-                setattr(self, field.key, value)
+            if kind != NAME or KEEPS_FIELDS:
+                setattr(self, message.keys[position], value)
 
 
 class BoardSettings(Record):

@@ -1,10 +1,104 @@
 """The fixed words of the wire: outcomes, reasons, faults, states; with what they mean and what to do.
 
 Each word is sent as ASCII and kept in memory as its index. The numbers are never reused.
-No functions here: on a board the sentences of a module without functions are let go after its import.
-"""
 
-from shared_protocol.fields import KEEPS_TEXTS
+What happened and what to do (of a fault also: its first and its second evidence) stands here, divided by bars: a
+board's compiler drops this text, and `sentences` reads it for everybody else. {i} is the number of the bank, motor or input
+concerned, {ms} a time.
+
+reason:
+    seen: a contact saw it arrive
+    sent: the pulse was given; nothing can see the points | look at the points
+    arrived: the motor ended its own pulse
+    already: a contact sees that it lies so already
+    below_ready: the bank is below the ready voltage | wait {ms} ms
+    resting: the coil has not rested | wait {ms} ms
+    gap: a pulse of this bank has only just ended | wait {ms} ms
+    pulse_running: a pulse of this bank is running | wait {ms} ms
+    stale: there is no fresh reading of the bank's voltage | wait {ms} ms; if it stays, look at the sense wire
+    queued_ahead: other throws of this bank come first | wait {ms} ms
+    bank_out: the bank is out of use | mend the fault, then clear it
+    junction_out: the junction is out of use | move it by hand; mend the fault, then clear it
+    stop: the operator's stop is on | release
+    not_while: an input forbids it | free input {i}
+    queue_full: the queue is full | wait, or cancel what is not needed
+    board_restarted: the board has restarted since | look at the lies, then ask again
+    no_such_junction: there is no such junction | compare the layout file with the board's settings
+    no_such_lie: the junction has no such lie | compare the layout file with the board's settings
+    no_such_route: there is no such route | compare the layout file with the board's settings
+    old_id: the request is older than what the board remembers | ask again with a new number
+    longest_wait: its time ran out before the bank was ready | see why the bank is slow, or allow a longer wait
+    operator: the operator cancelled it
+    host_lost: the host fell silent | reconnect, look at the lies, then ask again
+    route_failed: an earlier throw of the route did not end well | mend that one, then set the route again
+    leaving: the firmware was told to leave | start the firmware again
+    no_contact: its contact did not answer in time | look at the points: half over, jammed, or the contact
+    one_of_two: one of two motors did not arrive |
+        the bank may be too small for two at once: raise its voltage or capacitance
+    no_drop: the bank did not drop as a coil would make it | look for an open coil, wire or driver
+    kept_on: the motor did not end its own pulse | look for a jam, or a worn end contact
+    contacts_disagree: its two contacts say different things | look at the contacts and their wires
+    held_down: the bank is held down: a driver is stuck on or a coil is shorted |
+        switch the supply off now; find the hot coil
+    forbidden: the motors would pass a forbidden combination | throw the junction by hand to a plain lie first
+    settings_coming: new settings are arriving | wait until they are in
+    no_settings: the board has no settings | send it a layout
+    busy: throws are waiting or running | wait until the queue is empty
+    not_out: nothing is out there
+    no_such_throw: no such throw is waiting
+    ok: taken
+    wrong_count: not as many records came as were announced | send the settings again
+    wrong_crc: the settings changed on the way | send the settings again
+    flash: the board could not write its settings | look at the board; send the settings again
+    out_of_range: a value is outside its range | correct the value
+    missing: a record is missing | correct the layout file
+    twice: the same thing is said twice | remove one
+    no_such_bank: it names a bank that is not there | correct the bank
+    no_such_motor: it names a motor that is not there | correct the motor
+    no_such_coil: the bank has no such output | correct the output
+    no_such_input: the board has no such input | correct the input
+    no_such_output: the board has no such follower output | correct the output
+    same_coil: two coils share one output | give each coil an output of its own
+    same_pin: one pin has two uses | give each use a pin of its own
+    same_input: one input has two uses | give each use an input of its own
+    pin_not_usable: that pin can't be used for this | choose another pin
+    never_reached: the supply can never bring the bank to this ready voltage |
+        lower the ready voltage or raise the supply
+    over_range: the supply can give more than the board can measure | lower the supply or change the divider
+    stuck_driver_burns: a driver failed short would burn the coil or the resistor |
+        larger resistor, or a cut-off, PTC or fuse
+    full_pulse_longer: the pulse at full bank is longer than the pulse at ready voltage | make it shorter or equal
+    motor_twice: a motor belongs to two junctions | give it to one
+    motor_unused: a motor belongs to no junction | give it to a junction or remove it
+    same_lie: two lies of a junction set its motors alike | make them differ
+    too_few_lies: a junction needs at least two lies | add the missing lie
+    wrong_motors: the kind of junction takes another number of motors | correct the kind or its motors
+    bad_order: the order does not name each motor once | correct the order
+    lie_forbidden: a lie sets a forbidden combination | correct the lie or the combination
+    forbidden_in_passing: from some lie its motors would pass a forbidden combination | change the order of the motors
+    not_together: motors pulsed together must be on one bank and one run of outputs |
+        move them, or pulse them one after another
+    contact_inputs: the kind of contact takes another number of inputs | correct the contact
+    too_many: there are more than the board can hold | use a second board
+    bad_route: a route names a junction twice or has no throws | correct the route
+    bad_button: the button's target does not fit its kind | correct the button
+    wrong_place: records must be numbered from 0 without gaps | number them again
+    not_a_setting: that is not a setting | remove it
+fault:
+    none: no fault
+    recharge_stalled: the bank does not recharge as it should |
+        look at the charge resistor, its joints, and for leakage | mV reached | ms waited
+    supply_missing: nothing charges the bank | look at the supply, its fuse and its plug | mV now | mV before
+    no_drop: the bank did not drop: coil or wire open | move it by hand; look at the coil, its wire, plug and driver |
+        mV dropped | mV expected
+    held_down: the bank is held down: driver stuck on, or coil shorted |
+        switch the supply off now; find the hot coil; change the driver | mV now | mV before
+    sense_range: the voltage reading is not possible | look at the divider, its joints and the sense wire | mV read |
+        mV possible
+    contacts_disagree: two contacts of a motor say different things | look at the contacts and their wires |
+        contact 1 | contact 2
+    button_stuck: a button is held too long | free the button; look at its wire | input | ms held
+"""
 
 OUTCOMES = ("done", "refused", "expired", "cancelled", "failed")
 DONE, REFUSED, EXPIRED, CANCELLED, FAILED = 0, 1, 2, 3, 4
@@ -24,194 +118,92 @@ THROW_WAITING, THROW_PULSE, THROW_ANSWER = 0, 1, 2
 ORIGINS = ("host", "button", "power_up")
 FROM_HOST, FROM_BUTTON, FROM_POWER_UP = 0, 1, 2
 
-# (word, what happened, what to do). {i} is the number of the bank, motor, input concerned; {ms} a time.
-_REASON_TABLE = (
-    ("seen", "a contact saw it arrive", ""),
-    ("sent", "the pulse was given; nothing can see the points", "look at the points"),
-    ("arrived", "the motor ended its own pulse", ""),
-    ("already", "a contact sees that it lies so already", ""),
-    ("below_ready", "the bank is below the ready voltage", "wait {ms} ms"),
-    ("resting", "the coil has not rested", "wait {ms} ms"),
-    ("gap", "a pulse of this bank has only just ended", "wait {ms} ms"),
-    ("pulse_running", "a pulse of this bank is running", "wait {ms} ms"),
-    (
-        "stale",
-        "there is no fresh reading of the bank's voltage",
-        "wait {ms} ms; if it stays, look at the sense wire",
-    ),
-    ("queued_ahead", "other throws of this bank come first", "wait {ms} ms"),
-    ("bank_out", "the bank is out of use", "mend the fault, then clear it"),
-    ("junction_out", "the junction is out of use", "move it by hand; mend the fault, then clear it"),
-    ("stop", "the operator's stop is on", "release"),
-    ("not_while", "an input forbids it", "free input {i}"),
-    ("queue_full", "the queue is full", "wait, or cancel what is not needed"),
-    ("board_restarted", "the board has restarted since", "look at the lies, then ask again"),
-    ("no_such_junction", "there is no such junction", "compare the layout file with the board's settings"),
-    ("no_such_lie", "the junction has no such lie", "compare the layout file with the board's settings"),
-    ("no_such_route", "there is no such route", "compare the layout file with the board's settings"),
-    ("old_id", "the request is older than what the board remembers", "ask again with a new number"),
-    (
-        "longest_wait",
-        "its time ran out before the bank was ready",
-        "see why the bank is slow, or allow a longer wait",
-    ),
-    ("operator", "the operator cancelled it", ""),
-    ("host_lost", "the host fell silent", "reconnect, look at the lies, then ask again"),
-    (
-        "route_failed",
-        "an earlier throw of the route did not end well",
-        "mend that one, then set the route again",
-    ),
-    ("leaving", "the firmware was told to leave", "start the firmware again"),
-    (
-        "no_contact",
-        "its contact did not answer in time",
-        "look at the points: half over, jammed, or the contact",
-    ),
-    (
-        "one_of_two",
-        "one of two motors did not arrive",
-        "the bank may be too small for two at once: raise its voltage or capacitance",
-    ),
-    ("no_drop", "the bank did not drop as a coil would make it", "look for an open coil, wire or driver"),
-    ("kept_on", "the motor did not end its own pulse", "look for a jam, or a worn end contact"),
-    ("contacts_disagree", "its two contacts say different things", "look at the contacts and their wires"),
-    (
-        "held_down",
-        "the bank is held down: a driver is stuck on or a coil is shorted",
-        "switch the supply off now; find the hot coil",
-    ),
-    (
-        "forbidden",
-        "the motors would pass a forbidden combination",
-        "throw the junction by hand to a plain lie first",
-    ),
-    ("settings_coming", "new settings are arriving", "wait until they are in"),
-    ("no_settings", "the board has no settings", "send it a layout"),
-    ("busy", "throws are waiting or running", "wait until the queue is empty"),
-    ("not_out", "nothing is out there", ""),
-    ("no_such_throw", "no such throw is waiting", ""),
-    ("ok", "taken", ""),
-    ("wrong_count", "not as many records came as were announced", "send the settings again"),
-    ("wrong_crc", "the settings changed on the way", "send the settings again"),
-    ("flash", "the board could not write its settings", "look at the board; send the settings again"),
-    ("out_of_range", "a value is outside its range", "correct the value"),
-    ("missing", "a record is missing", "correct the layout file"),
-    ("twice", "the same thing is said twice", "remove one"),
-    ("no_such_bank", "it names a bank that is not there", "correct the bank"),
-    ("no_such_motor", "it names a motor that is not there", "correct the motor"),
-    ("no_such_coil", "the bank has no such output", "correct the output"),
-    ("no_such_input", "the board has no such input", "correct the input"),
-    ("no_such_output", "the board has no such follower output", "correct the output"),
-    ("same_coil", "two coils share one output", "give each coil an output of its own"),
-    ("same_pin", "one pin has two uses", "give each use a pin of its own"),
-    ("same_input", "one input has two uses", "give each use an input of its own"),
-    ("pin_not_usable", "that pin can't be used for this", "choose another pin"),
-    (
-        "never_reached",
-        "the supply can never bring the bank to this ready voltage",
-        "lower the ready voltage or raise the supply",
-    ),
-    (
-        "over_range",
-        "the supply can give more than the board can measure",
-        "lower the supply or change the divider",
-    ),
-    (
-        "stuck_driver_burns",
-        "a driver failed short would burn the coil or the resistor",
-        "larger resistor, or a cut-off, PTC or fuse",
-    ),
-    (
-        "full_pulse_longer",
-        "the pulse at full bank is longer than the pulse at ready voltage",
-        "make it shorter or equal",
-    ),
-    ("motor_twice", "a motor belongs to two junctions", "give it to one"),
-    ("motor_unused", "a motor belongs to no junction", "give it to a junction or remove it"),
-    ("same_lie", "two lies of a junction set its motors alike", "make them differ"),
-    ("too_few_lies", "a junction needs at least two lies", "add the missing lie"),
-    ("wrong_motors", "the kind of junction takes another number of motors", "correct the kind or its motors"),
-    ("bad_order", "the order does not name each motor once", "correct the order"),
-    ("lie_forbidden", "a lie sets a forbidden combination", "correct the lie or the combination"),
-    (
-        "forbidden_in_passing",
-        "from some lie its motors would pass a forbidden combination",
-        "change the order of the motors",
-    ),
-    (
-        "not_together",
-        "motors pulsed together must be on one bank and one run of outputs",
-        "move them, or pulse them one after another",
-    ),
-    ("contact_inputs", "the kind of contact takes another number of inputs", "correct the contact"),
-    ("too_many", "there are more than the board can hold", "use a second board"),
-    ("bad_route", "a route names a junction twice or has no throws", "correct the route"),
-    ("bad_button", "the button's target does not fit its kind", "correct the button"),
-    ("wrong_place", "records must be numbered from 0 without gaps", "number them again"),
-    ("not_a_setting", "that is not a setting", "remove it"),
-)  # type: tuple[tuple[str, str, str], ...]
+REASONS = (
+    "seen",
+    "sent",
+    "arrived",
+    "already",
+    "below_ready",
+    "resting",
+    "gap",
+    "pulse_running",
+    "stale",
+    "queued_ahead",
+    "bank_out",
+    "junction_out",
+    "stop",
+    "not_while",
+    "queue_full",
+    "board_restarted",
+    "no_such_junction",
+    "no_such_lie",
+    "no_such_route",
+    "old_id",
+    "longest_wait",
+    "operator",
+    "host_lost",
+    "route_failed",
+    "leaving",
+    "no_contact",
+    "one_of_two",
+    "no_drop",
+    "kept_on",
+    "contacts_disagree",
+    "held_down",
+    "forbidden",
+    "settings_coming",
+    "no_settings",
+    "busy",
+    "not_out",
+    "no_such_throw",
+    "ok",
+    "wrong_count",
+    "wrong_crc",
+    "flash",
+    "out_of_range",
+    "missing",
+    "twice",
+    "no_such_bank",
+    "no_such_motor",
+    "no_such_coil",
+    "no_such_input",
+    "no_such_output",
+    "same_coil",
+    "same_pin",
+    "same_input",
+    "pin_not_usable",
+    "never_reached",
+    "over_range",
+    "stuck_driver_burns",
+    "full_pulse_longer",
+    "motor_twice",
+    "motor_unused",
+    "same_lie",
+    "too_few_lies",
+    "wrong_motors",
+    "bad_order",
+    "lie_forbidden",
+    "forbidden_in_passing",
+    "not_together",
+    "contact_inputs",
+    "too_many",
+    "bad_route",
+    "bad_button",
+    "wrong_place",
+    "not_a_setting",
+)
 
-REASONS = tuple([row[0] for row in _REASON_TABLE])
-REASON_TEXTS = tuple([row[1] for row in _REASON_TABLE]) if KEEPS_TEXTS else ()
-REASON_REMEDIES = tuple([row[2] for row in _REASON_TABLE]) if KEEPS_TEXTS else ()
-
-
-# (word, reason, remedy, evidence 1, evidence 2). The number of a fault (from 1) is its blink code.
-_FAULT_TABLE = (
-    ("none", "no fault", "", "", ""),
-    (
-        "recharge_stalled",
-        "the bank does not recharge as it should",
-        "look at the charge resistor, its joints, and for leakage",
-        "mV reached",
-        "ms waited",
-    ),
-    (
-        "supply_missing",
-        "nothing charges the bank",
-        "look at the supply, its fuse and its plug",
-        "mV now",
-        "mV before",
-    ),
-    (
-        "no_drop",
-        "the bank did not drop: coil or wire open",
-        "move it by hand; look at the coil, its wire, plug and driver",
-        "mV dropped",
-        "mV expected",
-    ),
-    (
-        "held_down",
-        "the bank is held down: driver stuck on, or coil shorted",
-        "switch the supply off now; find the hot coil; change the driver",
-        "mV now",
-        "mV before",
-    ),
-    (
-        "sense_range",
-        "the voltage reading is not possible",
-        "look at the divider, its joints and the sense wire",
-        "mV read",
-        "mV possible",
-    ),
-    (
-        "contacts_disagree",
-        "two contacts of a motor say different things",
-        "look at the contacts and their wires",
-        "contact 1",
-        "contact 2",
-    ),
-    ("button_stuck", "a button is held too long", "free the button; look at its wire", "input", "ms held"),
-)  # type: tuple[tuple[str, str, str, str, str], ...]
-
-FAULTS = tuple([row[0] for row in _FAULT_TABLE])
-FAULT_TEXTS = _FAULT_TABLE if KEEPS_TEXTS else ()
-
-if not KEEPS_TEXTS:
-    # A board sends words, not sentences: let them go.
-    del _REASON_TABLE
-    del _FAULT_TABLE
+# The number of a fault (from 1) is its blink code.
+FAULTS = (
+    "none",
+    "recharge_stalled",
+    "supply_missing",
+    "no_drop",
+    "held_down",
+    "sense_range",
+    "contacts_disagree",
+    "button_stuck",
+)
 
 RECHARGE_STALLED = 1
 SUPPLY_MISSING = 2

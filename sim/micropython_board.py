@@ -26,6 +26,8 @@ FUEL_TO_START = 1 << 35
 FUEL_TO_STEP = 1 << 34
 GUEST_FILES = ("__init__.py", "exchange.py", "virtual_board.py")
 SLOTS = 3
+# Of the firmware, what is of use on hardware alone, and what only a host needs.
+HARDWARE_FILES = ("pico.py", "boot.py", "chains.py", "notes.py", "pulser.py", "sampler.py", "traces.py", "wiring.py")
 
 
 class GuestDied(RuntimeError):
@@ -177,7 +179,7 @@ def install(files: Path) -> None:
     """Put the firmware's files into a folder as they lie on a board, with the virtual board's half beside them."""
     files.mkdir(parents=True)
     for room in ("shared_protocol", "device"):
-        shutil.copytree(ROOT / room, files / room, ignore=shutil.ignore_patterns("__pycache__", "pico.py", "boot.py"))
+        shutil.copytree(ROOT / room, files / room, ignore=shutil.ignore_patterns("__pycache__", *HARDWARE_FILES))
     shutil.move(str(files / "device" / "main.py"), str(files / "main.py"))
     guest = files / "sim" / "guest"
     guest.mkdir(parents=True)

@@ -7,7 +7,7 @@ in docs/reference against `pages()`.
 import sys
 from pathlib import Path
 
-from shared_protocol import messages, words
+from shared_protocol import messages, sentences, words
 from shared_protocol.fields import INT, INTS, KIND_NAMES, NAME, WORD, Field, Message
 from shared_protocol.line import LINE_MAX
 from shared_protocol.settings_table import SETTINGS
@@ -137,7 +137,7 @@ def messages_page() -> str:
 
 def _reasons() -> str:
     rows = ["| word | what happened | what to do |", "| --- | --- | --- |"]
-    for word, text, remedy in zip(words.REASONS, words.REASON_TEXTS, words.REASON_REMEDIES, strict=True):
+    for word, text, remedy in zip(words.REASONS, sentences.REASON_TEXTS, sentences.REASON_REMEDIES, strict=True):
         rows.append(f"| `{word}` | {text} | {remedy} |")
     rows += ["", "`{ms}` is the time that the message gives, `{i}` the number of the bank, motor or input.", ""]
     return "\n".join(rows)
@@ -146,7 +146,7 @@ def _reasons() -> str:
 def faults_page() -> str:
     """Every fault with its blink code."""
     rows = ["| blinks | fault | what is wrong | what to do | evidence |", "| --- | --- | --- | --- | --- |"]
-    for number, (word, text, remedy, first, second) in enumerate(words.FAULT_TEXTS):
+    for number, (word, text, remedy, first, second) in enumerate(sentences.FAULT_TEXTS):
         if number:
             rows.append(f"| {number} | `{word}` | {text} | {remedy} | {first}; {second} |")
     return "\n".join(

@@ -11,10 +11,14 @@ import threading
 import time
 from collections.abc import Callable
 
+from device.control.controller import Controller
+from device.main import step
 from sim.cpython_board import CPythonBoard
 from sim.engine import Engine, Finished
 from sim.guest import exchange as at
-from sim.layout import Layout
+from sim.guest.virtual_board import MemorySlots, VirtualBoard
+from sim.layout import BoardLayout, Layout
+from sim.slots import Slots
 from sim.world import World
 
 POLL_S = 0.02
@@ -157,15 +161,46 @@ class Pace:
             self._due_s = time.monotonic()
 
 
+class AddressedBoard(CPythonBoard):
+    """A board whose harness plug has address links: it tells the address as one of its abilities."""
+
+    def __init__(self, slots: Slots, address: int) -> None:
+        super().__init__(slots)
+        self._address = address
+
+    def _boot(self, engine: Engine) -> None:
+        board = VirtualBoard(MemorySlots(self.slots), engine.uid.encode(), engine.boot)
+        if self._address:
+            board.caps = VirtualBoard.caps + b" address %d" % self._address
+        board.exchange = lambda: engine.exchange(board.io, board.rx, board.tx)
+        engine.begin()
+        board.exchange()
+        controller = Controller(board)
+        controller.start()
+        self.controller = controller
+        while not controller.left:
+            step(board, controller)
+
+
 class VirtualServer:
     """A virtual board on 127.0.0.1. kind: 'cpython' or 'micropython'. port 0: any free one; `start` returns it.
 
-    Its banks are empty at first. pace: False lets time run as fast as it can while a client is attached.
+    layout: of one board, or one board's part. Its banks are empty at first. pace: False lets time run as fast as it can
+    while a client is attached. uid: what it says who it is; '': the id of the layout file, else `virtual-1`. Where the
+    layout file gives an address, a board on CPython tells it too.
     """
 
-    def __init__(self, layout: Layout, kind: str = "cpython", port: int = 0, pace: bool = True) -> None:
+    def __init__(
+        self,
+        layout: Layout | BoardLayout,
+        kind: str = "cpython",
+        port: int = 0,
+        pace: bool = True,
+        uid: str = "",
+    ) -> None:
         self._real = pace
-        self._layout = layout
+        self._layout = layout if isinstance(layout, BoardLayout) else layout.only
+        self._uid = uid or self._layout.uid or uid_of(0)
         self._kind = kind
         self._wanted_port = port
         self._stop = threading.Event()
@@ -182,6 +217,11 @@ class VirtualServer:
 
     def __exit__(self, *_: object) -> None:
         self.close()
+
+    @property
+    def running(self) -> bool:
+        """False once it has ended, told to or not (see `failure`)."""
+        return not self._stop.is_set()
 
     @property
     def port(self) -> int:
@@ -241,7 +281,7 @@ class VirtualServer:
     def _run(self) -> None:
         # A board that keeps its boot count in flash never gives a number twice; this one takes it from the clock, so
         # that a host that was connected to another run sees a restart.
-        engine = Engine(self.world, self.script, boot=1 + int(time.time()) % BOOT_NUMBERS)
+        engine = Engine(self.world, self.script, self._uid, 1 + int(time.time()) % BOOT_NUMBERS)
         engine.pace = Pace(self.script, self._stop, self._real)
         slots = {0: self._layout.slot_lines()}
         try:
@@ -251,8 +291,58 @@ class VirtualServer:
                 with MicroPythonBoard(slots) as board:
                     board.run(engine)
             else:
-                CPythonBoard(slots).run(engine)
+                AddressedBoard(slots, self._layout.address).run(engine)
         except BaseException as error:  # noqa: BLE001 - a thread's end is told by whoever waits for it
             self.failure = error
         finally:
             self._stop.set()
+
+
+def uid_of(board: int) -> str:
+    """The id of a virtual board (from 0) that no layout file gives one."""
+    return f"virtual-{board + 1}"
+
+
+class VirtualBoards:
+    """All boards of a layout, each on a port of its own: `port`, the next one, and so on. port 0: any free ones."""
+
+    def __init__(self, layout: Layout, kind: str = "cpython", port: int = 0) -> None:
+        self.servers = [
+            VirtualServer(board, kind, port + number if port else 0, uid=board.uid or uid_of(number))
+            for number, board in enumerate(layout.boards)
+        ]
+
+    def __enter__(self) -> "VirtualBoards":
+        self.start()
+        return self
+
+    def __exit__(self, *_: object) -> None:
+        self.close()
+
+    def start(self) -> list[int]:
+        """Begin to serve; returns the ports. Raises ServingError: nothing is served then."""
+        try:
+            return [server.start() for server in self.servers]
+        except ServingError:
+            self.close()
+            raise
+
+    def close(self) -> None:
+        """Stop, and wait until all is stopped."""
+        for server in self.servers:
+            server.close()
+
+    def wait(self) -> None:
+        """Serve until interrupted, or until one of the boards has ended."""
+        while all(server.running for server in self.servers):
+            time.sleep(POLL_S * 5)
+
+    @property
+    def urls(self) -> list[str]:
+        """Where each board is, for pyserial."""
+        return [f"socket://127.0.0.1:{server.port}" for server in self.servers]
+
+    @property
+    def failures(self) -> list[BaseException]:
+        """Why boards have failed."""
+        return [server.failure for server in self.servers if server.failure is not None]

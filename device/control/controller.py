@@ -15,7 +15,7 @@ from device.control.outbox import Outbox
 from device.control.plant import Plant
 from device.control.queue import Queue
 from device.control.requests import Requests
-from device.control.store import SettingsStore
+from device.control.store import SettingsStore, Slot
 from device.control.telling import Teller
 from device.control.throws import Throws
 from device.control.ticks import elapsed
@@ -49,7 +49,7 @@ class Controller:
         tables = CrcTables()
         self.outbox = Outbox(tables)
         self.endpoint = Endpoint(board, tables, self.outbox)
-        self.store = SettingsStore(board, tables, self.endpoint.decoder)
+        self.store = SettingsStore(board, self.endpoint.decoder)
         self.teller = Teller(board, self.outbox)
         self.memory = RequestMemory(self.outbox)
         self.requests = Requests(self)
@@ -69,7 +69,7 @@ class Controller:
         self._reset_after = False
         self._leave_ms = 0
         self._host_there = False
-        self._heard_ms = -1
+        self._last_ms = -1
         self._inputs_changed = False
         self._slices: "list[Callable[[int], None]]" = []
         self._slice_ms: "list[int]" = []
@@ -88,19 +88,40 @@ class Controller:
             if self.plant.restore:
                 self.lies.begin_restore(self.plant)
 
-    def take_settings(self, settings: Settings) -> None:
-        """Put new settings in force; what is known of unchanged motors stays known. Nothing fires."""
-        before = self.plant
-        self._build(settings)
-        if before is not None and self.plant is not None:
-            self.plant.keep_positions(before)
+    def commit_settings(self, crc: bytes) -> "Slot":
+        """Check the settings that were staged and put them in force; what is known of unchanged motors stays known.
+
+        The plant that is there goes first: a board has not the memory for two. Nothing waits or runs, nothing fires.
+        """
+        known = self.plant.known() if self.plant is not None else None
+        self._forget_plant()
+        found = self.store.commit(crc)
+        settings = found.settings
+        if settings is None:
+            # The set before stays in force; it is read from its slot again.
+            settings = self.store.load()
+        if settings is not None:
+            self._build(settings)
+            if known is not None and self.plant is not None:
+                self.plant.keep(known, found.problem is not None)
+        found.settings = None
+        return found
+
+    def _forget_plant(self) -> None:
+        self.plant = None
+        self.queue = None
+        self._firing = None
+        self._contacts = None
+        self._buttons = None
+        self._followers = None
+        self._lay_slices()
 
     def _build(self, settings: Settings) -> None:
         self.board.configure(settings)
         plant = Plant(settings, self.board, self.outbox)
         throws = Throws(plant, self.outbox, self.memory)
         firing = Firing(plant, self.board, self.outbox, throws)
-        queue = Queue(plant, self.outbox, self.memory, firing, throws)
+        queue = Queue(plant, self.board, self.outbox, self.memory, firing, throws)
         self.plant = plant
         self._firing = firing
         self.queue = queue
@@ -120,28 +141,47 @@ class Controller:
         many as fit into SLICES_US: so a tick stays short, and a pulse is not late because of a lamp.
         """
         board = self.board
-        endpoint = self.endpoint
-        begun_us = board.ticks_us()
         now_ms = board.ticks_ms()
         queue = self.queue
         hot = queue is not None and queue.dispatch.hot
-        if now_ms != self._heard_ms or endpoint.reading:
-            self._heard_ms = now_ms
-            endpoint.read(hot)
-            if endpoint.told_to_leave and not self.leaving:
-                self.leave(False, now_ms)
-        self._sweep(begun_us, now_ms)
-        if queue is not None:
+        if hot and now_ms == self._last_ms:
+            # Nothing but the voltages, until the next millisecond.
+            assert queue is not None
+            queue.dispatch.tick(now_ms)
+            return
+        self._last_ms = now_ms
+        begun_us = board.ticks_us()
+        endpoint = self.endpoint
+        endpoint.read(hot)
+        if endpoint.told_to_leave and not self.leaving:
+            self.leave(False, now_ms)
+        if queue is None or not queue.dispatch.holds(now_ms):
+            self._sweep(begun_us, now_ms)
+        queue = self.queue
+        if queue is not None and (queue.throws.count or self.store.staging):
             self._tick_queue(queue, now_ms)
-        if self.outbox.open:
+        outbox = self.outbox
+        if outbox.open:
             if self.teller.telling:
                 self._tell(now_ms)
             endpoint.write(hot)
         if self.leaving:
             self._go_on_leaving(now_ms)
-        self.has_work = endpoint.line_waiting or self.lies.wants_work or self._staging_disturbed
-        self.due_us = self._due_us(now_ms)
-        self.may_collect = self._litter and self.due_us >= COLLECT_IDLE_US
+        self._see_what_is_next(now_ms)
+
+    def _see_what_is_next(self, now_ms: int) -> None:
+        self.has_work = (
+            self.endpoint.line_waiting
+            or self.lies.wants_work
+            or (self.teller.sending_settings and self.teller.wants_record)
+            or (self.store.staging and self.busy)
+        )
+        if self.busy:
+            self.due_us = 0
+            self.may_collect = False
+        else:
+            self.due_us = self._due_us(now_ms)
+            self.may_collect = self._litter and self.due_us >= COLLECT_IDLE_US
 
     def _tick_queue(self, queue: Queue, now_ms: int) -> None:
         firing = self._firing
@@ -191,6 +231,8 @@ class Controller:
         gate = plant.banks[number]
         gate.update(now_ms)
         plant.watches[number].update(now_ms)
+        if self.queue is not None and self.queue.dispatch.hot:
+            self.queue.dispatch.look_near(number, now_ms)
         # A bank that is held down is no longer charged, where a cut-off is fitted.
         wanted = plant.faults.codes[SCOPE_BANK][number] != HELD_DOWN
         if gate.charge_on != wanted:
@@ -231,8 +273,6 @@ class Controller:
 
     def _tell(self, now_ms: int) -> None:
         self.teller.tick(self.plant, self.queue, now_ms)
-        if self.teller.sending_settings:
-            self.teller.send_settings()
         self.outbox.tick(now_ms)
 
     def _board_buttons(self, buttons: Buttons, now_ms: int) -> None:
@@ -257,9 +297,7 @@ class Controller:
         self._host_there = there
 
     def _due_us(self, now_ms: int) -> int:
-        """How long nothing is due."""
-        if self.queue is not None and self.queue.throws.count:
-            return 0
+        """How long nothing is due, with no throw in the queue."""
         teller = self.teller
         if self.has_work or self.leaving or self.outbox.to_send or teller.telling or teller.telemetry:
             return 0
@@ -289,6 +327,8 @@ class Controller:
             if decoded is not None:
                 self._host_there = True
                 self.requests.take(decoded, self.endpoint.body(), now_ms)
+        if self.teller.wants_record:
+            self.teller.give_record(self.store.next_record())
         if self.lies.wants_work and self.plant is not None:
             self.lies.work(self.plant, now_ms)
         self.has_work = False

@@ -31,18 +31,29 @@ from shared_protocol.words import (
 
 TYPE_CHECKING = False
 if TYPE_CHECKING:
+    from device.board.seam import Board
     from device.control.forecast import Forecast
 
 # All throws are looked at this often in any case.
 LOOK_MS = 250
+# A crossing is near from a 32nd of the full bank below it; then everything else waits, but only so long at a stretch.
+NEAR_SHIFT = 5
+HOLD_MS = 30
 
 
 class Dispatch:
     """The pulses to come of one plant. `hot` is True while a throw waits for nothing but a voltage."""
 
     def __init__(
-        self, plant: Plant, firing: Firing, throws: Throws, obstacles: Obstacles, forecast: "Forecast"
+        self,
+        plant: Plant,
+        board: "Board",
+        firing: Firing,
+        throws: Throws,
+        obstacles: Obstacles,
+        forecast: "Forecast",
     ) -> None:
+        self._board = board
         self._plant = plant
         self._firing = firing
         self._throws = throws
@@ -54,6 +65,7 @@ class Dispatch:
         # Of each bank: the throw whose only obstacle is the voltage.
         self._armed: "list[Throw | None]" = [None] * len(plant.banks)
         self.hot = False
+        self._near_ms = -1
         self._due_ms = 0
         self._left_ms = LOOK_MS
         # True while settings are being written to flash: nothing fires until that is over.
@@ -69,24 +81,39 @@ class Dispatch:
         """Move every throw on; start what may start."""
         if self._throws.count == 0:
             self.hot = False
+            self._near_ms = -1
         elif self._plant.changes.happened or elapsed(now_ms, self._due_ms) >= 0:
             self._look_at_all(now_ms)
         elif self.hot:
             self._compare(now_ms)
 
     def _compare(self, now_ms: int) -> None:
-        """Only the voltages can have changed."""
+        """Only the voltages can have changed since all throws were looked at: nothing else stands in the way."""
+        board = self._board
+        plans = self._plans
         for bank in self._banks:
             throw = self._armed[bank]
-            if throw is None:
+            if throw is None or not board.bank_reaches(bank, plans[bank].ready_mv):
                 continue
-            gate = self._plant.banks[bank]
-            gate.look()
-            if gate.fresh and gate.low_mv >= self._plans[bank].ready_mv:
-                if self._plant.route_order == FULLEST:
-                    self._look_at_all(now_ms)
-                    return
-                self._try(throw, self._plans[bank], now_ms)
+            if self._plant.route_order == FULLEST:
+                self._look_at_all(now_ms)
+                return
+            self._firing.start(throw, plans[bank], now_ms)
+            self._plant.changes.happened = True
+
+    def look_near(self, bank: int, now_ms: int) -> None:
+        """See whether a crossing is near: then all that can wait should wait, for HOLD_MS at most."""
+        throw = self._armed[bank]
+        gate = self._plant.banks[bank]
+        if throw is None or not gate.fresh:
+            return
+        if gate.mean_mv + (gate.settings.full_mv >> NEAR_SHIFT) >= self._plans[bank].ready_mv:
+            if elapsed(now_ms, self._near_ms) >= 2 * HOLD_MS or self._near_ms < 0:
+                self._near_ms = now_ms
+
+    def holds(self, now_ms: int) -> bool:
+        """True while a crossing is so near that only it matters."""
+        return self.hot and self._near_ms >= 0 and 0 <= elapsed(now_ms, self._near_ms) < HOLD_MS
 
     def _look_at_all(self, now_ms: int) -> None:
         plant = self._plant

@@ -61,3 +61,10 @@ class FaultBook:
         values[1] = scope
         values[2] = number
         return True
+
+    def take_over(self, other: "FaultBook") -> None:
+        """Keep what another book of the same banks, junctions and buttons has kept."""
+        self.codes = other.codes
+        self._first = other._first
+        self._second = other._second
+        self._near = other._near

@@ -129,7 +129,10 @@ class Firing:
         """Give the pulse that `plan` holds for `throw`. If the hardware refuses, the throw goes on waiting."""
         gate = self._plant.banks[plan.bank]
         mean_mv = self._board.bank_mean_mv(plan.bank)
-        width_us = plan.width_us(gate.low_mv)
+        if mean_mv < 0 or mean_mv > gate.most_mv:
+            # More than the supply can give is no reading to fire by.
+            return
+        width_us = plan.width_us(mean_mv)
         if not self._plant.allowed[plan.bank].allows(plan.group, plan.mask, width_us):
             self._throws.finish(throw, FAILED, WHY_FORBIDDEN, throw.junction, passed_ms(throw, now_ms))
             return

@@ -40,7 +40,7 @@ class BankGate:
         self.fresh = False
         # More than the supply can give is no reading to fire by (the watch makes a fault of it when it lasts).
         self.plausible = True
-        self._most_mv = most_plausible_mv(self.settings)
+        self.most_mv = most_plausible_mv(self.settings)
         self.running = False
         self.charge_on = True
         self._shown_ready = False
@@ -59,7 +59,7 @@ class BankGate:
         low_mv = board.bank_low_mv(number)
         self.low_mv = low_mv
         self.fresh = low_mv >= 0 and not self.running
-        self.plausible = low_mv <= self._most_mv
+        self.plausible = low_mv <= self.most_mv
         if self.before_mv >= 0:
             last_mv = board.bank_last_mv(number)
             if 0 <= last_mv < self.lowest_mv:

@@ -18,7 +18,6 @@ class JunctionState:
     ) -> None:
         self.settings = settings
         self._changes = changes
-        self.number = settings.i
         self.motors = motors
         for motor in motors:
             motor.junction = settings.i
@@ -62,7 +61,7 @@ class JunctionState:
     def tell(self) -> None:
         """Tell the host which way it lies."""
         values = self._outbox.plain(messages.LIE)
-        values[0] = self.number
+        values[0] = self.settings.i
         values[1] = self.lie
         values[2] = self.source
 

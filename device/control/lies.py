@@ -32,10 +32,9 @@ class LieKeeper:
 
     def begin_restore(self, plant: Plant) -> None:
         """Read the saved lies; `tick` asks for them one after another."""
-        lines = self._board.slot_lines(LIES_SLOT)
-        if len(lines) != 1:
+        if not self._board.slot_rewind(LIES_SLOT):
             return
-        parts = lines[0].split(b" ")
+        parts = self._board.slot_line().split(b" ")
         if parts[0] != _HEAD or len(parts) != len(plant.junctions) + 1:
             return
         for part in parts[1:]:
@@ -66,7 +65,7 @@ class LieKeeper:
         if len(self._saved) != len(plant.junctions):
             return True
         for junction in plant.junctions:
-            if junction.lie >= 0 and junction.lie != self._saved[junction.number]:
+            if junction.lie >= 0 and junction.lie != self._saved[junction.settings.i]:
                 return True
         return False
 

@@ -4,7 +4,7 @@ from device.control.outbox import Outbox
 from shared_protocol import messages
 from shared_protocol.words import REFUSED, WHY_OLD_ID
 
-KEPT_REQUESTS = 64
+KEPT_REQUESTS = 32
 _FIELDS = 9
 
 UNKNOWN_ID, RUNNING, FINISHED, TOO_OLD = 0, 1, 2, 3

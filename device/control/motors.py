@@ -107,9 +107,9 @@ class Motors:
         self.all = [MotorState(motor) for motor in settings.motors]
         self._seen_by_contact = [motor for motor in self.all if motor.has_contact]
         # What was pulsed before a restart is not known: every coil rests from the start.
-        self._rest = Marks(2 * len(self.all))
+        self.rest = Marks(2 * len(self.all))
         for coil in range(2 * len(self.all)):
-            self._rest.set(coil, board.ticks_ms())
+            self.rest.set(coil, board.ticks_ms())
         self._sampled = Marks(1)
         self._in_1 = -1
         self._in_2 = -1
@@ -117,15 +117,15 @@ class Motors:
 
     def sweep(self, now_ms: int) -> None:
         """Keep marks right; once a tick."""
-        self._rest.sweep(now_ms)
+        self.rest.sweep(now_ms)
 
     def pulsed(self, motor: int, position: int, now_ms: int) -> None:
         """A coil of `motor` has just been pulsed."""
-        self._rest.set(2 * motor + position, now_ms)
+        self.rest.set(2 * motor + position, now_ms)
 
     def rest_left_ms(self, motor: int, position: int, now_ms: int) -> int:
         """How long that coil must still rest."""
-        left = self.all[motor].settings.rest_ms - self._rest.since(2 * motor + position, now_ms)
+        left = self.all[motor].settings.rest_ms - self.rest.since(2 * motor + position, now_ms)
         return left if left > 0 else 0
 
     def inputs_changed(self) -> bool:

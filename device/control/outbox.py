@@ -13,8 +13,8 @@ TYPE_CHECKING = False
 if TYPE_CHECKING:
     from device.board.seam import Board
 
-KEPT = 40
-PLAIN = 40
+KEPT = 32
+PLAIN = 28
 FOR_ANSWERS = 16
 _WIDEST = 11
 

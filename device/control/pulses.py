@@ -115,9 +115,11 @@ class PulsePlan:
         """The pulse at a bank voltage: from the pulse at ready voltage to the one at full bank, in a straight line."""
         row = self._lie
         shorter_us = row.pulse_us - row.full_us
+        if shorter_us <= 0:
+            return row.pulse_us
         span_mv = self._plant.settings.banks[self.bank].full_mv - row.ready_mv
         over_mv = mv - row.ready_mv
-        if shorter_us <= 0 or span_mv <= 0 or over_mv <= 0:
+        if span_mv <= 0 or over_mv <= 0:
             return row.pulse_us
         if over_mv >= span_mv:
             return row.full_us

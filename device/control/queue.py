@@ -26,6 +26,10 @@ from shared_protocol.words import (
     WHY_STOP,
 )
 
+TYPE_CHECKING = False
+if TYPE_CHECKING:
+    from device.board.seam import Board
+
 # A throw asked for now may miss the tick that follows its acceptance by noise; after this it is refused.
 NOW_GRACE_MS = 20
 # A route's deadline grows by its wait for each throw; limits stay far below a quarter period of ticks.
@@ -35,7 +39,15 @@ LONGEST_LIMIT_MS = 4_000_000
 class Queue:
     """Throws and routes of one plant."""
 
-    def __init__(self, plant: Plant, outbox: Outbox, memory: RequestMemory, firing: Firing, throws: Throws) -> None:
+    def __init__(
+        self,
+        plant: Plant,
+        board: "Board",
+        outbox: Outbox,
+        memory: RequestMemory,
+        firing: Firing,
+        throws: Throws,
+    ) -> None:
         self._plant = plant
         self._outbox = outbox
         self._memory = memory
@@ -43,7 +55,7 @@ class Queue:
         self.throws = throws
         self._obstacles = Obstacles(plant, firing, throws)
         self.forecast = Forecast(plant, firing, throws)
-        self.dispatch = Dispatch(plant, firing, throws, self._obstacles, self.forecast)
+        self.dispatch = Dispatch(plant, board, firing, throws, self._obstacles, self.forecast)
 
     # ---- requests
 

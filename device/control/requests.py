@@ -87,7 +87,8 @@ class Requests:
         elif controller.teller.sending_settings:
             self._answer(messages.TO_ASK, WHY_BUSY, -1)
         else:
-            controller.teller.begin_settings(controller.store.lines())
+            controller.store.begin_telling()
+            controller.teller.begin_settings()
 
     # ---- throws and routes
 
@@ -211,15 +212,14 @@ class Requests:
             controller.store.abandon()
             self._answer(messages.TO_COMMIT, WHY_BUSY, -1)
             return
-        found = controller.store.commit(crc)
-        if found.problem is not None or found.settings is None:
+        found = controller.commit_settings(crc)
+        if found.problem is not None or found.sequence == 0:
             problem = found.problem
             values = controller.outbox.plain(messages.REJECTED)
             values[0] = problem.record if problem else -1
             values[1] = problem.field.encode() if problem else b""
             values[2] = REASONS.index(problem.why) if problem else WHY_FLASH
             return
-        controller.take_settings(found.settings)
         values = controller.outbox.plain(messages.ACCEPTED)
         values[0] = found.crc
         values[1] = found.sequence

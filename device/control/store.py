@@ -1,10 +1,11 @@
 """Settings in their two slots: staged into the older one, checked whole, committed by the last line.
 
 A slot is its record bodies, a line each, and a trailer `slot SEQUENCE COUNT CRC`. A slot without a right trailer does
-not count, so power lost at any moment leaves the newest whole set.
+not count, so power lost at any moment leaves the newest whole set. Slots are read a line at a time: a board has not the
+memory for all of them at once.
 """
 
-from shared_protocol.crc import Crc32, CrcTables
+from shared_protocol.crc import crc_of, crc_text
 from shared_protocol.line import GOOD, LineDecoder
 from shared_protocol.settings import Problem, Settings
 from shared_protocol.settings_check import check
@@ -14,6 +15,8 @@ if TYPE_CHECKING:
     from device.board.seam import Board
 
 LIES_SLOT = 2
+# Records of one set; more is not a slot of ours.
+MOST_RECORDS = 400
 
 
 class Slot:
@@ -21,6 +24,7 @@ class Slot:
 
     def __init__(self) -> None:
         self.sequence = 0
+        self.count = 0
         self.crc = b""
         self.settings: "Settings | None" = None
         self.problem: "Problem | None" = None
@@ -29,53 +33,67 @@ class Slot:
 class SettingsStore:
     """Reads and writes the settings slots of a board. Allocates: not for the steady loop."""
 
-    def __init__(self, board: "Board", tables: CrcTables, decoder: LineDecoder) -> None:
+    def __init__(self, board: "Board", decoder: LineDecoder) -> None:
         self._board = board
-        self._crc = Crc32(tables)
         # The link's decoder knows the records too: a second one would only cost memory.
         self._decoder = decoder
         self.slot = 1
         self.sequence = 0
+        self.count = 0
         self.crc = b""
         self.staging = False
         # Set by the tick when the host is lost in mid-transfer; the transfer is dropped where that may allocate.
         self.staging_lost = False
         self._announced = 0
         self._staged = 0
-        self._staged_crc = Crc32(tables)
+        self._staged_crc = 0
+        self._left_to_tell = 0
 
     def load(self) -> "Settings | None":
         """The newest whole and right set, None if there is none."""
-        best: "Settings | None" = None
-        for number in range(2):
-            slot = self._read(number)
-            if slot.settings is not None and slot.sequence > self.sequence:
-                best = slot.settings
-                self.slot = number
-                self.sequence = slot.sequence
-                self.crc = slot.crc
-        return best
+        first = self._look(0)
+        second = self._look(1)
+        newer, older = (0, 1) if first.sequence >= second.sequence else (1, 0)
+        for number in (newer, older):
+            found = first if number == 0 else second
+            if found.sequence:
+                self._parse(number, found)
+                if found.settings is not None:
+                    self._take(number, found)
+                    return found.settings
+        return None
 
-    def lines(self) -> "list[bytes]":
-        """The record bodies of the set in force."""
-        if self.sequence == 0:
-            return []
-        return self._board.slot_lines(self.slot)[:-1]
+    def _take(self, number: int, found: "Slot") -> None:
+        self.slot = number
+        self.sequence = found.sequence
+        self.count = found.count
+        self.crc = found.crc
+
+    def begin_telling(self) -> None:
+        """From now on `next_record` gives the records of the set in force."""
+        self._left_to_tell = self.count
+        if not self._board.slot_rewind(self.slot):
+            self._left_to_tell = 0
+
+    def next_record(self) -> bytes:
+        """The next record's body, empty when all were given (or the flash can't be read)."""
+        if self._left_to_tell == 0:
+            return b""
+        self._left_to_tell -= 1
+        return self._board.slot_line()
 
     def begin(self, count: int) -> bool:
         """Begin to stage `count` records into the older slot."""
         self._announced = count
         self._staged = 0
-        self._staged_crc.reset()
+        self._staged_crc = 0
         self.staging = self._board.slot_begin(1 - self.slot)
         return self.staging
 
     def stage(self, body: bytes) -> bool:
         """Take one record's body."""
         self._staged += 1
-        for byte in body:
-            self._staged_crc.add(byte)
-        self._staged_crc.add(10)
+        self._staged_crc = crc_of(body + b"\n", self._staged_crc)
         return self._board.slot_write(body)
 
     def abandon(self) -> None:
@@ -93,12 +111,13 @@ class SettingsStore:
             found.problem = Problem(-1, "", "flash")
         elif self._staged != self._announced:
             found.problem = Problem(-1, "", "wrong_count")
-        elif self._staged_crc.text() != crc:
+        elif crc_text(self._staged_crc) != crc:
             found.problem = Problem(-1, "", "wrong_crc")
         if found.problem is not None:
             return found
         other = 1 - self.slot
-        self._parse(self._board.slot_lines(other), found)
+        found.count = self._staged
+        self._parse(other, found)
         if found.problem is not None:
             return found
         sequence = self.sequence + 1
@@ -108,47 +127,55 @@ class SettingsStore:
             found.settings = None
             found.problem = Problem(-1, "", "flash")
             return found
-        self.slot = other
-        self.sequence = sequence
-        self.crc = crc
         found.sequence = sequence
         found.crc = crc
+        self._take(other, found)
         return found
 
-    def _read(self, number: int) -> Slot:
+    def _look(self, number: int) -> Slot:
+        """See whether a slot is whole; not yet what is in it."""
         found = Slot()
-        lines = self._board.slot_lines(number)
-        if len(lines) < 2:
+        board = self._board
+        crc = 0
+        count = 0
+        last = b""
+        if not board.slot_rewind(number):
             return found
-        parts = lines[-1].split(b" ")
+        while count <= MOST_RECORDS:
+            line = board.slot_line()
+            if not line:
+                break
+            if last:
+                crc = crc_of(last + b"\n", crc)
+                count += 1
+            last = line
+        parts = last.split(b" ")
         if len(parts) != 4 or parts[0] != b"slot" or not _is_number(parts[1]) or not _is_number(parts[2]):
             return found
-        lines = lines[:-1]
-        self._crc.reset()
-        for line in lines:
-            for byte in line:
-                self._crc.add(byte)
-            self._crc.add(10)
-        if self._crc.text() != parts[3] or int(parts[2]) != len(lines):
+        if count == 0 or int(parts[2]) != count or parts[3] != crc_text(crc):
             return found
-        self._parse(lines, found)
-        if found.settings is not None:
-            found.sequence = int(parts[1])
-            found.crc = parts[3]
+        found.sequence = int(parts[1])
+        found.count = count
+        found.crc = parts[3]
         return found
 
-    def _parse(self, lines: "list[bytes]", found: Slot) -> None:
+    def _parse(self, number: int, found: Slot) -> None:
+        """Read the records of a slot: `found` gets settings, or a problem."""
         settings = Settings()
-        number = 0
-        for line in lines:
-            decoded = self._decoder.decode(line)
+        board = self._board
+        if not board.slot_rewind(number):
+            found.problem = Problem(-1, "", "flash")
+            return
+        for record in range(found.count):
+            # A large set takes longer than the watchdog waits.
+            board.feed_watchdog()
+            decoded = self._decoder.decode(board.slot_line())
             if decoded.fault != GOOD or decoded.message is None:
-                found.problem = Problem(number, "", "out_of_range")
+                found.problem = Problem(record, "", "out_of_range")
                 return
             found.problem = settings.add(decoded.message, decoded.values)
             if found.problem is not None:
                 return
-            number += 1
         found.problem = check(settings)
         if found.problem is None:
             # Where each record came from was for naming a problem.

@@ -27,9 +27,6 @@ class Teller:
         self._outbox = outbox
         self._marks = Marks(3)
         self._place = _NOT_TELLING
-        self._no_lines: "list[bytes]" = []
-        self._lines = self._no_lines
-        self._line = 0
         self._sending = False
         # Of the telemetry that is being sent: the next bank, the next throw.
         self._next_bank = _NOTHING
@@ -52,10 +49,8 @@ class Teller:
         """Tell everything, from the next tick on."""
         self._place = 0
 
-    def begin_settings(self, lines: "list[bytes]") -> None:
-        """Send these record bodies, then the end."""
-        self._lines = lines
-        self._line = 0
+    def begin_settings(self) -> None:
+        """Send the records one by one, as they are given, then the end."""
         self._sending = True
 
     @property
@@ -73,16 +68,17 @@ class Teller:
         """True while lines of telemetry are still to come."""
         return self._next_bank >= 0 or self._next_throw >= 0
 
-    def send_settings(self) -> None:
-        """Hand the next record to the outbox if it is idle. Allocates nothing; the lines are there."""
-        if not self._outbox.quiet:
-            return
-        if self._line < len(self._lines):
-            if self._outbox.raw(self._lines[self._line]):
-                self._line += 1
+    @property
+    def wants_record(self) -> bool:
+        """True if the next record can be sent: reading it from flash allocates, so that is not the tick's."""
+        return self._sending and self._outbox.quiet
+
+    def give_record(self, body: bytes) -> None:
+        """Send one record; an empty one ends them."""
+        if body:
+            self._outbox.raw(body)
             return
         self._sending = False
-        self._lines = self._no_lines
         values = self._outbox.plain(messages.END)
         values[0] = messages.ASK_SETTINGS
 

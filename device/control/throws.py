@@ -13,7 +13,7 @@ from shared_protocol.words import (
     WHY_OK,
 )
 
-THROWS = 40
+THROWS = 32
 ROUTES = 8
 
 FREE = -1

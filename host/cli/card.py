@@ -6,8 +6,8 @@ from typing import TYPE_CHECKING
 from host.cli.cautions import CAUTIONS
 from host.cli.common import DONE, Wrong, say, say_json
 from host.wording import volts
+from shared_protocol.sentences import FAULT_TEXTS
 from shared_protocol.settings_table import BUTTON_KINDS, JUNCTION_KINDS
-from shared_protocol.words import FAULT_TEXTS
 
 if TYPE_CHECKING:
     from shared_protocol.settings import ButtonSettings, Settings
@@ -25,10 +25,12 @@ def run(args: argparse.Namespace) -> int:
     """Print the page, from the layout file or from the board."""
     from host.cli.settings import named_settings
 
-    _, settings = named_settings(args)
-    if settings is None:
-        raise Wrong("there are no settings to print")
-    lines = card_lines(settings)
+    lines: list[str] = []
+    for _, _, settings in named_settings(args):
+        if settings is None:
+            raise Wrong("there are no settings to print")
+        lines += ["\f"] if lines else []
+        lines += card_lines(settings)
     if args.json:
         say_json({"lines": lines})
     else:

@@ -1,13 +1,16 @@
 """`stop`, `release`, `cancel`, `clear`: requests that fire nothing."""
 
 import argparse
+from contextlib import ExitStack
 from typing import TYPE_CHECKING, Any
 
 from host.cli import common
-from host.cli.common import DONE, NO, Wrong, say, say_json
+from host.cli.common import DONE, NO, Wrong, complain, say, say_json
 
 if TYPE_CHECKING:
-    from host.session import Session
+    from host.cli.common import Host
+    from host.views import AnswerView
+    from sim.layout import Layout
 
 REQUEST_S = 4.0
 _MOST_BUTTONS = 64
@@ -35,28 +38,88 @@ def _id(text: str) -> int:
 
 
 def run_stop(args: argparse.Namespace) -> int:
-    """Stop, and wait until the board says so. The stop goes out first: the status is not waited for."""
-    with common.unready_session(args) as session:
-        link = session.link
-        link.open()
-        # `stop` sends nothing and says so until the board is there, then sends once.
-        if not session.wait_for(lambda: session.stop() or link.error is not None, common.CONNECT_S):
-            raise Wrong(f"stop: not sent, there is no board at {link.port}")
-        if link.error is not None:
-            raise link.error
-        return _tell_answer(args, session, "stop", 0)
+    """Stop, and wait until every board says so. The stop goes out first: no status is waited for.
+
+    Several ports need no layout file: whoever is there is stopped.
+    """
+    layout = _layout_if_good(args)
+    with ExitStack() as stack:
+        if common.is_for_fleet(layout):
+            hosts = [stack.enter_context(common.unready_session(args, layout))]
+        else:
+            ones = [argparse.Namespace(**{**vars(args), "ports": (port,)}) for port in common.ports_of(args)]
+            hosts = [stack.enter_context(common.unready_session(one)) for one in ones]
+        return _stop(args, hosts)
+
+
+def _layout_if_good(args: argparse.Namespace) -> "Layout | None":
+    """The layout file that was named; nothing that is wrong with it may keep a stop from going out."""
+    from sim.layout import BadFile
+
+    try:
+        return common.layout_of(args)
+    except (BadFile, Wrong) as error:
+        complain(f"coilwarden: {error}")
+        return None
+
+
+def _stop(args: argparse.Namespace, hosts: "list[Host]") -> int:
+    """Tell each board once, as soon as it is there; what each one answers."""
+    boards = [
+        (common.who_is(part) if part.name or len(hosts) == 1 else part.session.link.port, part.session)
+        for host in hosts for part in host.parts
+    ]  # fmt: skip
+    sent: set[int] = set()
+    for host in hosts:
+        host.open()
+
+    def is_sent() -> bool:
+        for host in hosts[1:]:
+            host.poll()
+        for place, (_, session) in enumerate(boards):
+            # It sends nothing and says so while the board is not there.
+            if place not in sent and session.stop():
+                sent.add(place)
+        return len(sent) == len(boards) or all(host.all_told for host in hosts)
+
+    def is_answered() -> bool:
+        for host in hosts[1:]:
+            host.poll()
+        return all("stop" in boards[place][1].model.answers for place in sent)
+
+    hosts[0].wait_for(is_sent, common.CONNECT_S)
+    if not sent:
+        raise next((host.error for host in hosts if host.error is not None), None) or Wrong(
+            "stop: not sent, no board of the layout is there"
+        )
+    hosts[0].wait_for(is_answered, REQUEST_S)
+    return _tell_stop(args, [(who, session.model.answers.get("stop")) for who, session in boards])
+
+
+def _tell_stop(args: argparse.Namespace, found: "list[tuple[str, AnswerView | None]]") -> int:
+    bad = [(who, answer) for who, answer in found if answer is None or not answer.ok]
+    if len(found) == 1 and found[0][1] is None:
+        raise Wrong("stop: the board did not answer")
+    texts = [f"{who}: {'NOT stopped, no answer' if answer is None else answer.text}" for who, answer in bad]
+    first = next(answer for _, answer in bad or found if answer is not None or bad)
+    text = "; ".join(texts) if len(found) > 1 and texts else first.text if first is not None else ""
+    if args.json:
+        say_json({"request": "stop", "ok": not bad, "why": first.why if first is not None else "", "text": text})
+    else:
+        say(text)
+    return NO if bad else DONE
 
 
 def run_release(args: argparse.Namespace) -> int:
     """Release, and wait until the board says so."""
-    with common.session_with(args) as session:
+    with common.session_with(args, common.layout_of(args)) as session:
         before = _count(session, "release")
         if not session.release():
             raise Wrong("release: not sent, there is no connection to the board")
         return _tell_answer(args, session, "release", before)
 
 
-def _tell_answer(args: argparse.Namespace, session: "Session", word: str, before: int) -> int:
+def _tell_answer(args: argparse.Namespace, session: "Host", word: str, before: int) -> int:
     answers = session.model.answers
     if not session.wait_for(lambda: word in answers and answers[word].count > before, REQUEST_S):
         raise Wrong(f"{word}: the board did not answer")
@@ -70,7 +133,7 @@ def _tell_answer(args: argparse.Namespace, session: "Session", word: str, before
 
 def run_cancel(args: argparse.Namespace) -> int:
     """Cancel, and wait for the answer."""
-    with common.session_with(args) as session:
+    with common.session_with(args, common.layout_of(args)) as session:
         before = _count(session, "cancel")
         if not session.cancel(args.id):
             raise Wrong("cancel: not sent, there is no connection to the board")
@@ -81,7 +144,7 @@ def run_clear(args: argparse.Namespace) -> int:
     """Clear, and wait for the answer."""
     if (args.scope == "all") != (args.name is None):
         raise Wrong("clear: 'all' takes no name" if args.scope == "all" else f"clear: which {args.scope}?")
-    with common.session_with(args) as session:
+    with common.session_with(args, common.layout_of(args)) as session:
         common.need_settings(session)
         number = _which(session, args.scope, args.name)
         before = _count(session, "clear")
@@ -90,7 +153,7 @@ def run_clear(args: argparse.Namespace) -> int:
         return _tell_answer(args, session, "clear", before)
 
 
-def _which(session: "Session", scope: str, name: str | None) -> int:
+def _which(session: "Host", scope: str, name: str | None) -> int:
     if name is None:
         return 0
     if scope == "bank":
@@ -102,7 +165,7 @@ def _which(session: "Session", scope: str, name: str | None) -> int:
     return int(name) - 1
 
 
-def _count(session: "Session", word: str) -> int:
+def _count(session: "Host", word: str) -> int:
     """How many answers to that request have come so far."""
     answers = session.model.answers
     return answers[word].count if word in answers else 0

@@ -20,26 +20,26 @@ def add(commands: Any, shared: argparse.ArgumentParser) -> None:
 def run(args: argparse.Namespace) -> int:
     """Open the terminal; it shows 'searching' and 'lost' itself, so no connection is waited for here."""
     from host.link import Link
-    from host.model import LayoutModel
-    from host.session import Session
     from host.terminal.app import run_desk
 
     with ExitStack() as stack:
-        if args.port:
+        if args.ports:
             layout = common.layout_of(args)
-            port = str(args.port)
+            ports = common.ports_of(args) if common.is_for_fleet(layout) else [common.port_of(args)]
         else:
-            from sim.serving import ServingError, VirtualServer
+            from sim.serving import ServingError, VirtualBoards
 
             layout = common.layout_or_demo(args)
-            server = VirtualServer(layout, kind=args.kind)
+            boards = VirtualBoards(layout, args.kind)
             try:
-                port = f"socket://127.0.0.1:{server.start()}"
+                boards.start()
             except ServingError as error:
                 raise Wrong(f"desk: {error}") from error
-            stack.callback(server.close)
-        link = Link(port)
-        stack.callback(link.close)
-        session = Session(link, LayoutModel(layout))
-        link.open()
+            stack.callback(boards.close)
+            ports = boards.urls
+        links = [Link(port) for port in ports]
+        for link in links:
+            stack.callback(link.close)
+        session = common.host_for(layout, links)
+        session.open()
         return int(run_desk(session, layout, args.picture))

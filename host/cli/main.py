@@ -5,6 +5,7 @@ import os
 import sys
 from collections.abc import Sequence
 from pathlib import Path
+from typing import Any
 
 from host.cli import boards, control, desk, rehearsing, settings, throwing, virtual
 from host.cli.common import BAD, NO, Wrong, complain
@@ -15,10 +16,25 @@ _EPILOG = (
 )
 
 
+class _Ports(argparse.Action):
+    """`--port` may be given several times: `ports` has all of them, `port` the last."""
+
+    def __call__(
+        self, parser: argparse.ArgumentParser, namespace: argparse.Namespace, values: Any, option: str | None = None
+    ) -> None:
+        """One more."""
+        namespace.port = values
+        namespace.ports = (*getattr(namespace, "ports", ()), values)
+
+
 def make_parser() -> argparse.ArgumentParser:
     """The parser of all commands."""
     shared = argparse.ArgumentParser(add_help=False)
-    shared.add_argument("--port", help="a device, or any pyserial URL such as socket://127.0.0.1:7777")
+    shared.add_argument(
+        "--port", action=_Ports, default=None, metavar="PORT",
+        help="a device, or any pyserial URL such as socket://127.0.0.1:7777; once for each board",
+    )  # fmt: skip
+    shared.set_defaults(ports=())
     shared.add_argument("--layout", type=Path, metavar="FILE", help="a layout file")
     shared.add_argument("--json", action="store_true", help="print one JSON document")
     parser = argparse.ArgumentParser(

@@ -9,8 +9,8 @@ from host.cli.cautions import cautions_for
 from host.cli.common import BAD, DONE, NO, Wrong, complain, say, say_json
 
 if TYPE_CHECKING:
+    from host.cli.common import Host
     from host.model import LayoutModel
-    from host.session import Session
     from host.views import BankView, OutcomeView
 
 DEFAULT_WAIT_MS = 5000
@@ -70,15 +70,13 @@ def run_route(args: argparse.Namespace) -> int:
         return _finish(args, session, session.route(number, args.wait), throws * each_s + ANSWER_S)
 
 
-def _caution(args: argparse.Namespace, session: "Session") -> None:
-    board = session.model.board
-    if args.yes or board is None:
-        return
-    for text in cautions_for(board.kind, board.uid):
+def _caution(args: argparse.Namespace, session: "Host") -> None:
+    texts = () if args.yes else [text for each in session.model.boards for text in cautions_for(each.kind, each.uid)]
+    for text in dict.fromkeys(texts):
         complain(f"caution: {text}")
 
 
-def _finish(args: argparse.Namespace, session: "Session", number: int, limit_s: float) -> int:
+def _finish(args: argparse.Namespace, session: "Host", number: int, limit_s: float) -> int:
     """Wait for the end of request `number`; if nobody waits any more, cancel what has not fired."""
     ended = None
     cancelled = False
@@ -143,16 +141,19 @@ def run_status(args: argparse.Namespace) -> int:
     """How things are."""
     with common.session_with(args, common.layout_of(args)) as session:
         model = session.model
-        if model.board is not None and model.board.settings_crc:
+        if model.boards and all(board.settings_crc for board in model.boards):
             common.need_settings(session)
-            session.wait_for(lambda: all(bank.heard_at_s is not None for bank in model.banks), REQUEST_S)
+            session.wait_for(lambda: all(bank.heard_at_s is not None or bank.lost for bank in model.banks), REQUEST_S)
         now_s = time.monotonic()
         go = model.go_line(now_s)
+        boards = board_rows(session)
         if args.json:
-            say_json(status_json(model, now_s))
+            say_json(status_json(model, now_s) | {"boards": boards})
         else:
             for line in status_lines(model, now_s):
                 say(line)
+            for row in boards if len(boards) > 1 else ():
+                say(_board_text(row))
         return DONE if go.level in ("go", "wait") else NO
 
 
@@ -190,6 +191,31 @@ def status_json(model: "LayoutModel", now_s: float) -> dict[str, Any]:
             for fault in model.faults
         ],
     }  # fmt: skip
+
+
+def board_rows(session: "Host") -> list[dict[str, Any]]:
+    """Each board of the layout: whether it is there, where, and whether what sits there is a spare."""
+    rows = []
+    for part in session.parts:
+        model = part.session.model
+        board = model.board if model.connection.state == "connected" else None
+        rows.append(
+            {
+                "name": part.name, "connected": board is not None, "port": part.session.link.port if board else "",
+                "uid": board.uid if board else "", "spare": part.spare, "settings_match": model.settings_match,
+                "stopped": model.stopped if board else None, "junctions": [number + 1 for number in part.junctions],
+            }
+        )  # fmt: skip
+    return rows
+
+
+def _board_text(row: dict[str, Any]) -> str:
+    if not row["connected"]:
+        return f"board {row['name']}: not connected"
+    spare = "a spare, " if row["spare"] else ""
+    stopped = ", stopped" if row["stopped"] else ""
+    other = ", other settings than the layout file" if row["settings_match"] is False else ""
+    return f"board {row['name']}: {spare}{row['uid']} at {row['port']}{stopped}{other}"
 
 
 def _bank_json(bank: "BankView") -> dict[str, Any]:

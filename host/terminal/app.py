@@ -54,7 +54,8 @@ class DeskApp(App[int]):
         super().__init__()
         self.animation_level = "none"
         self.desk = Desk(session, cautions)
-        self.tuning = Tuning()
+        # One for each board.
+        self.tunings: list[Tuning] = []
         self.stamp = stamp or wall_stamp(session.clock)
         self._live = live
         self._drawn_s = 0.0
@@ -158,7 +159,8 @@ class DeskApp(App[int]):
     def action_choose_route(self) -> None:
         """Ask which route."""
         routes = self.desk.model.routes
-        keys = tuple(routes_view.letter_of(route.number) for route in routes)
+        # Those without a letter are set from the command palette.
+        keys = tuple(routes_view.letter_of(route.number) for route in routes[: len(routes_view.LETTERS)])
 
         def chosen(key: str | None) -> None:
             if key:
@@ -212,7 +214,9 @@ class DeskApp(App[int]):
 
     def action_tuning(self) -> None:
         """The tuning screen."""
-        self.push_screen(TuningScreen(self.tuning))
+        parts = self.desk.session.parts
+        self.tunings += [Tuning() for _ in range(len(parts) - len(self.tunings))]
+        self.push_screen(TuningScreen(self.tunings))
 
     def action_help(self) -> None:
         """Keys, words, cautions."""
@@ -254,7 +258,7 @@ class DeskApp(App[int]):
 
         def answered(key: str | None) -> None:
             if key == "y":
-                self.desk.cautions.acknowledge(self.desk.model.board)
+                self.desk.acknowledge_cautions()
                 self.desk.say("info", "Cautions read. Nothing has fired: ask for the throw again.")
             self.draw()
 

@@ -53,7 +53,7 @@ def bar(mv: int, full_mv: int, width: int, mark_mv: int = 0) -> str:
 
 
 def _look(bank: BankView, now_s: float) -> str:
-    return "dim" if is_past(bank, now_s) else _LOOKS.get(bank.state, "warn")
+    return "dim" if bank.lost or is_past(bank, now_s) else _LOOKS.get(bank.state, "warn")
 
 
 def is_past(bank: BankView, now_s: float) -> bool:
@@ -86,13 +86,16 @@ def bank_text(bank: BankView, now_s: float) -> str:
 
 def _state_row(bank: BankView, width: int, names: int, now_s: float) -> Row:
     text = bank_text(bank, now_s)
-    if bank.fault is not None:
+    if bank.fault is not None and not bank.lost:
         text = f"OUT: {bank.fault.what}"
     told = ""
     if bank.heard_at_s is not None and now_s - bank.heard_at_s + max(0, bank.age_ms) / 1000 >= OLD_S:
         told = age(bank.heard_at_s - max(0, bank.age_ms) / 1000, now_s) + " old"
     look = _look(bank, now_s)
     room = width - names - 2
+    if bank.lost:
+        text = f"board {bank.lost} not connected"
+        text = text if len(text) + len(told) < room else "not connected"
     if told:
         return row(" " * (names + 2), Piece(fit(text, room - len(told) - 1), look), Piece(" " + told, "warn"))
     return row(" " * (names + 2), Piece(fit(text, room), look))

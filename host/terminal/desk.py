@@ -7,7 +7,7 @@ from host.terminal.caution_view import CautionMemory
 from host.terminal.mode_view import Mode
 from host.terminal.rows import seconds
 from host.terminal.session_like import SessionLike
-from host.terminal.typing_view import Throw, Typing, Wrong, lie_choices, lie_keys
+from host.terminal.typing_view import MOST_DIGITS, Throw, Typing, Wrong, lie_choices, lie_keys
 from host.terminal.voltage_history import VoltageHistory
 
 LEVELS = {"done": "good", "refused": "warn", "expired": "warn", "cancelled": "warn"}
@@ -84,6 +84,11 @@ class Desk:
         """Put something on the answer line."""
         self.notice = Notice(level, text)
 
+    def acknowledge_cautions(self) -> None:
+        """A person has read them, for every board that is there."""
+        for board in self.model.boards:
+            self.cautions.acknowledge(board)
+
     def use_settings_wait(self) -> None:
         """Begin with the wait that the settings give to buttons."""
         settings = self.model.settings
@@ -99,6 +104,7 @@ class Desk:
 
     def typed(self, key: str, character: str | None) -> bool:
         """A key. True if it belonged to the number being typed, or to the choice of a lie."""
+        self.typing.most_digits = max(MOST_DIGITS, len(str(len(self.model.junctions))))
         if self.choosing >= 0:
             return self._chosen(key, character)
         if key == "enter":
@@ -133,7 +139,7 @@ class Desk:
     @property
     def caution_due(self) -> bool:
         """True if the cautions must be read before anything may fire."""
-        return self.cautions.due(self.model.board)
+        return any(self.cautions.due(board) for board in self.model.boards)
 
     def throw(self, junction: int, lie: int) -> None:
         """Ask for a throw in the mode that is set."""
@@ -169,8 +175,9 @@ class Desk:
         self.typing.clear()
         self.choosing = -1
         self._expect_answer("stop")
+        unreached = self.session.unreached
         if self.session.stop():
-            self.say("warn", "STOP sent.")
+            self.say("bad" if unreached else "warn", f"STOP sent; {unreached}." if unreached else "STOP sent.")
         else:
             self.say("bad", f"STOP NOT SENT: {NO_LINK}. Use the panel's stop, or switch the coil supply off.")
 

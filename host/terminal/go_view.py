@@ -29,11 +29,9 @@ def _sentence(line: GoLine) -> str:
 
 def title_text(model: LayoutModel) -> str:
     """Which layout, whether board and file agree, which board."""
-    name = "no layout"
-    if model.settings is not None and model.settings.board is not None:
-        name = model.settings.board.name.decode() or "layout without a name"
+    name = model.title
     if model.connection.state == "lost":
         return f"{name}, as last told"
     if model.settings_match is False:
         return f"{name}, board and file differ"
-    return f"{name}, {model.board.kind} board" if model.board is not None else name
+    return f"{name}, {model.board.kind} board" if model.board is not None and not model.several else name

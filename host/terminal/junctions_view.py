@@ -73,7 +73,7 @@ def _banks(model: LayoutModel, junction: JunctionView) -> list[int]:
 
 def _junction(model: LayoutModel, junction: JunctionView, columns: Widths, now_s: float, picked: bool) -> Row:
     known = known_by(junction)
-    lost = model.connection.state != "connected"
+    lost = junction.lost or model.connection.state != "connected"
     look = "bad" if known == "OUT" else _SOURCE_LOOKS.get(junction.source if junction.lie >= 0 else "none", "plain")
     waits = _waiting_for(model, junction)
     lies = junction.word

@@ -57,6 +57,8 @@ def queue_rows(model: LayoutModel, width: int, height: int, now_s: float) -> Row
 def _item(model: LayoutModel, item: QueueItem, width: int, now_s: float) -> Row:
     origin = _ORIGINS.get(item.by, "")
     what = f"{origin}{model.names.junction(item.junction)} > {model.names.lie(item.junction, item.lie)}"
+    if item.board and len(what) + len(item.board) + 3 <= width - 14:
+        what += f" ({item.board})"
     return row(
         Piece(fit(str(item.junction + 1), 3, right=True) + " ", "strong"),
         Piece(fit(what, width - 14)),

@@ -4,7 +4,7 @@ from host.model import LayoutModel
 from host.terminal.rows import Piece, Rows, fit, row, wrap
 from host.views import RouteView
 
-LETTERS = "abcdefghijklmnopqrstuvwxyz123456"
+LETTERS = "abcdefghijklmnopqrstuvwxyz1234567890ABCDEFGHIJKLMNOPQRSTUVWXYZ"
 
 
 def letter_of(number: int) -> str:

@@ -3,6 +3,7 @@
 from typing import Protocol
 
 from host.model import LayoutModel, Records
+from host.session import Part
 from host.views import OutcomeView
 
 
@@ -27,6 +28,13 @@ class TransferLike(Protocol):
         """Drop it."""
 
 
+class SettingsTaker(Protocol):
+    """One board's session, as far as settings are sent to it."""
+
+    def send_settings(self, records: Records) -> TransferLike:
+        """Send settings as one transaction."""
+
+
 class SessionLike(Protocol):
     """A session."""
 
@@ -43,7 +51,7 @@ class SessionLike(Protocol):
     def throw(self, junction: int, lie: int, wait_ms: int = 0) -> int:
         """Ask for one throw."""
 
-    def route(self, number: int, wait_ms: int = 0) -> int:
+    def route(self, route: int, wait_ms: int = 0) -> int:
         """Ask for a route."""
 
     def cancel(self, number: int) -> bool:
@@ -63,6 +71,14 @@ class SessionLike(Protocol):
 
     def fetch_settings(self) -> bool:
         """Ask for the board's settings."""
+
+    @property
+    def parts(self) -> list[Part]:
+        """Its boards."""
+
+    @property
+    def unreached(self) -> str:
+        """Which boards a stop or release does not reach now, in a sentence; '' if it reaches all."""
 
     def outcome_of(self, number: int) -> OutcomeView | None:
         """How a request ended."""

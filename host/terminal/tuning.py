@@ -5,7 +5,7 @@ from dataclasses import dataclass
 from host import wording
 from host.model import LayoutModel, Records
 from host.settings_diff import Difference, differences, label_of
-from host.terminal.session_like import SessionLike, TransferLike
+from host.terminal.session_like import SettingsTaker, TransferLike
 from host.terminal.tuning_table import TUNABLE, label_of_key, limits_text, parse, shown_value, units_text
 from shared_protocol import settings_table as table
 from shared_protocol.codec import plain
@@ -59,6 +59,8 @@ class Tuning:
         self.transfer: TransferLike | None = None
         self._texts: dict[Place, str] = {}
         self._told = True
+        # The numbers that people know the board's junctions by, where they are not its own.
+        self.numbers: tuple[int, ...] = ()
 
     # ---- the settings it starts from
 
@@ -141,7 +143,8 @@ class Tuning:
                 place = motors.index(row["i"]) + 1
                 entries += self._entries(motor, f"motor {place}: " if len(motors) > 1 else "motor: ")
                 bank = row["bank"] if bank < 0 and isinstance(row["bank"], int) else bank
-        title = f"{junction + 1:>2} {fields['name'] or 'junction'}"
+        shown = self.numbers[junction] if junction < len(self.numbers) else junction
+        title = f"{shown + 1:>2} {fields['name'] or 'junction'}"
         return Subject(title, bank, junction, tuple(entries))
 
     def _bank(self, number: int) -> Subject:
@@ -243,7 +246,7 @@ class Tuning:
         """True while a transaction is under way."""
         return self.transfer is not None and self.transfer.open
 
-    def send(self, session: SessionLike) -> None:
+    def send(self, session: SettingsTaker) -> None:
         """Send all records as one transaction."""
         self.transfer = session.send_settings(self.new_records())
         self._told = False

@@ -11,6 +11,8 @@ from textual.markup import escape
 from textual.widgets import Input, OptionList, Static
 from textual.widgets.option_list import Option
 
+from host.model import LayoutModel
+from host.session import Part
 from host.terminal.ask_screen import AskScreen
 from host.terminal.curve_plot import CurvePlot
 from host.terminal.curve_view import curve_of
@@ -21,6 +23,8 @@ from host.terminal.tuning import Entry, Place, Subject, Tuning, change_text
 
 # The curve is drawn again no faster than this: it is by far the largest part of the screen.
 CURVE_S = 1.0
+KEYS = "up/down Enter Tab  F2 review and send  F4 drop changes  Esc back  SPACE stop"
+SEVERAL_KEYS = "F2 review and send  F3 next board  F4 drop changes  Esc back  SPACE stop"
 
 
 class EntryRow(Horizontal):
@@ -62,18 +66,56 @@ class TuningScreen(DeskScreen[None]):
         Binding("escape", "leave", "Back"),
         Binding("ctrl+s,f2", "review", "Review and send"),
         Binding("ctrl+r,f4", "revert", "Drop changes"),
+        Binding("f3", "next_board", "Next board"),
         Binding("up", "move(-1)", "Up", show=False),
         Binding("down", "move(1)", "Down", show=False),
     ]
-    keys_text = "up/down Enter Tab  F2 review and send  F4 drop changes  Esc back  SPACE stop"
+    keys_text = KEYS
 
-    def __init__(self, tuning: Tuning) -> None:
+    def __init__(self, tunings: list[Tuning]) -> None:
         super().__init__()
-        self._tuning = tuning
+        self._tunings = tunings
+        self._board = 0
         self._subjects: list[Subject] = []
         self._shown: Subject | None = None
         self._curve_s = -CURVE_S
         self._asked_for_settings = False
+
+    # ---- which board
+
+    @property
+    def _part(self) -> Part:
+        """The board that is tuned."""
+        return self.desk.session.parts[self._board]
+
+    @property
+    def _tuning(self) -> Tuning:
+        """Its settings."""
+        return self._tunings[self._board]
+
+    @property
+    def _model(self) -> LayoutModel:
+        """What it has said, in its own numbers."""
+        return self._part.session.model
+
+    def action_next_board(self) -> None:
+        """The next board of the layout, unless settings are under way."""
+        if self._tuning.sending or len(self._tunings) < 2:
+            return
+        self._board = (self._board + 1) % len(self._tunings)
+        self._asked_for_settings = False
+        self._subjects = []
+        self._shown = None
+        self._name_board()
+        self.query_one("#form", VerticalScroll).remove_children()
+        self._take_settings()
+        self.show_all()
+
+    def _name_board(self) -> None:
+        self._tuning.numbers = self._part.junctions
+        several = len(self._tunings) > 1
+        self.query_one("#subjects", OptionList).border_title = self._part.name if several else "Tune what?"
+        self.keys_text = SEVERAL_KEYS if several else KEYS
 
     # ---- what it shows
 
@@ -81,7 +123,6 @@ class TuningScreen(DeskScreen[None]):
         """Subjects beside the form, the sentence, the curve."""
         with Horizontal(id="tune"):
             subjects = OptionList(id="subjects", compact=True)
-            subjects.border_title = "Tune what?"
             yield subjects
             with Vertical():
                 form = VerticalScroll(id="form", can_focus=False)
@@ -93,16 +134,19 @@ class TuningScreen(DeskScreen[None]):
     def on_mount(self) -> None:
         """Begin with the first subject."""
         super().on_mount()
+        self._name_board()
         self._take_settings()
         self.query_one("#subjects", OptionList).focus()
 
     def _take_settings(self) -> None:
-        if self._tuning.take(self.desk.model) or not self._subjects:
+        if self._tuning.take(self._model) or not self._subjects:
             self._list_subjects()
         if not self._tuning.base and not self._asked_for_settings:
             self._asked_for_settings = True
-            self.desk.session.fetch_settings()
-            self.desk.say("info", "The board's settings are not known yet: asking for them.")
+            if self._part.session.fetch_settings() or not self._part.name:
+                self.desk.say("info", "The board's settings are not known yet: asking for them.")
+            else:
+                self.desk.say("warn", f"Board {self._part.name} is not connected: its settings are not known.")
 
     def _list_subjects(self) -> None:
         chooser = self.query_one("#subjects", OptionList)
@@ -131,7 +175,7 @@ class TuningScreen(DeskScreen[None]):
         self.set_class(self.size.width >= WIDE, "wide")
         self.query_one("#curve").set_class(self.size.height >= TALL, "tall")
         self._take_settings()
-        answer = self._tuning.answer(self.desk.model)
+        answer = self._tuning.answer(self._model)
         if answer is not None:
             self.desk.say(*answer)
             self.call_after_refresh(self.show_all)
@@ -144,11 +188,13 @@ class TuningScreen(DeskScreen[None]):
 
     def _show_curve(self, now_s: float) -> None:
         plot = self.query_one("#curve", CurvePlot)
+        part = self._part
         bank = self._shown.bank if self._shown is not None else -1
-        if bank < 0:
-            bank = 0
+        bank = part.banks[max(0, bank)] if max(0, bank) < len(part.banks) else -1
         only = self._shown.junction if self._shown is not None else -1
-        changed = self._tuning.ready_mv(self.desk.model)
+        only = part.junctions[only] if 0 <= only < len(part.junctions) else -1
+        ready = self._tuning.ready_mv(self._model)
+        changed = {(part.junctions[junction], lie): mv for (junction, lie), mv in ready.items()}
         rows = max(1, plot.size.height - 3)
         plot.show(curve_of(self.desk.model, self.desk.history, bank, now_s, rows, changed, only))
 
@@ -257,7 +303,7 @@ class TuningScreen(DeskScreen[None]):
 
     def _reviewed(self, key: str | None) -> None:
         if key == "enter":
-            self._tuning.send(self.desk.session)
+            self._tuning.send(self._part.session)
         self.show_all()
 
     def _change_rows(self, width: int) -> Rows:

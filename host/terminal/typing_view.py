@@ -54,6 +54,7 @@ class Typing:
     def __init__(self) -> None:
         self.digits = ""
         self.letter = ""
+        self.most_digits = MOST_DIGITS
 
     @property
     def text(self) -> str:
@@ -69,7 +70,7 @@ class Typing:
         if len(character) != 1 or not character.isascii():
             return False
         if character.isdigit():
-            if not self.letter and len(self.digits) < MOST_DIGITS and (self.digits or character != "0"):
+            if not self.letter and len(self.digits) < self.most_digits and (self.digits or character != "0"):
                 self.digits += character
             return True
         if character.isalpha() and self.digits:

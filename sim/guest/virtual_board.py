@@ -8,11 +8,8 @@ from `before_tick` to `after_tick`, so a tick that allocates fails.
 import array
 
 from device.board.seam import Board
+from device.board.slots import FileSlots
 from sim.guest import exchange as at
-
-TYPE_CHECKING = False
-if TYPE_CHECKING:
-    from typing import BinaryIO
 
 try:
     import gc
@@ -125,8 +122,11 @@ class VirtualBoard(Board):
         self.io[at.TX_COUNT] = count + 1
         return True
 
-    def slot_lines(self, slot: int) -> "list[bytes]":
-        return self._slots.lines(slot)
+    def slot_rewind(self, slot: int) -> bool:
+        return self._slots.rewind(slot)
+
+    def slot_line(self) -> bytes:
+        return self._slots.line()
 
     def slot_begin(self, slot: int) -> bool:
         self.io[at.FLASHED] += 1
@@ -157,10 +157,16 @@ class MemorySlots:
     def __init__(self, kept: "dict[int, list[bytes]]") -> None:
         self._kept = kept
         self._open = 0
+        self._reading: "list[bytes]" = []
 
-    def lines(self, slot: int) -> "list[bytes]":
-        """The lines of a slot."""
-        return list(self._kept.get(slot, []))
+    def rewind(self, slot: int) -> bool:
+        """Begin to read a slot."""
+        self._reading = list(self._kept.get(slot, []))
+        return slot in self._kept
+
+    def line(self) -> bytes:
+        """Its next line, empty at the end."""
+        return self._reading.pop(0) if self._reading else b""
 
     def begin(self, slot: int) -> bool:
         """Empty a slot and write to it."""
@@ -180,48 +186,4 @@ class MemorySlots:
     def append(self, slot: int, line: bytes) -> bool:
         """Append to a closed slot."""
         self._kept.setdefault(slot, []).append(line)
-        return True
-
-
-class FileSlots:
-    """Slots as files `slot0.txt` and so on in the root of the board's file system."""
-
-    def __init__(self) -> None:
-        self._file: "BinaryIO | None" = None
-
-    def lines(self, slot: int) -> "list[bytes]":
-        """The lines of a slot."""
-        found = []  # type: list[bytes]
-        try:
-            with open("/slot%d.txt" % slot, "rb") as file:
-                for line in file.read().split(b"\n"):
-                    if line:
-                        found.append(line)
-        except OSError:
-            pass
-        return found
-
-    def begin(self, slot: int) -> bool:
-        """Empty a slot and write to it."""
-        self.end()
-        self._file = open("/slot%d.txt" % slot, "wb")
-        return True
-
-    def write(self, line: bytes) -> bool:
-        """Append to the slot that is open."""
-        assert self._file is not None
-        self._file.write(line + b"\n")
-        return True
-
-    def end(self) -> bool:
-        """Close it."""
-        if self._file is not None:
-            self._file.close()
-            self._file = None
-        return True
-
-    def append(self, slot: int, line: bytes) -> bool:
-        """Append to a closed slot."""
-        with open("/slot%d.txt" % slot, "ab") as file:
-            file.write(line + b"\n")
         return True

@@ -139,9 +139,9 @@ class BankBuilder:
         if bank["charge"] == "limited" and not bank["limit_ma"]:
             self._document.wrong((*where, "limit_ma"), "is missing: a limited source needs it")
         if bank["limit_ma"] and bank["charge"] != "limited":
-            self._document.wrong((*where, "limit_ma"), "belongs to charge = \"limited\"")
+            self._document.wrong((*where, "limit_ma"), 'belongs to charge = "limited"')
         if bank["guard"] == "cutoff" and "cut_off_pin" not in bank:
-            self._document.wrong((*where, "cut_off_pin"), "is missing: guard = \"cutoff\" needs it")
+            self._document.wrong((*where, "cut_off_pin"), 'is missing: guard = "cutoff" needs it')
         if "cut_off_pin" in bank and bank["guard"] != "cutoff" and bank["charge"] != "switched":
             self._document.wrong((*where, "cut_off_pin"), "nothing uses it: neither guard nor charge is a cut-off")
         tau_ms = bank["charge_ohm"] * bank["capacitance_uf"] / 1000

@@ -28,6 +28,7 @@ class LayoutBuilder:
         self.junctions = JunctionBuilder(document, self.records, self.banks, self.inputs)
         self.panel = PanelBuilder(self)
         self.name = ""
+        self.board: dict[str, Any] = {}
 
     def build(self) -> None:
         """Read every table, in the order in which a board wants the records."""
@@ -38,7 +39,8 @@ class LayoutBuilder:
             names.complete = not self.document.is_wrong((table,))
         self.name = str(self._table(data, "layout", keys.LAYOUT).get("name", ""))
         supply = self._table(data, "supply", keys.SUPPLY)
-        self._board(self._table(data, "board", keys.BOARD))
+        self.board = self._table(data, "board", keys.BOARD)
+        self._board(self.board)
         self._timing(self._table(data, "timing", keys.TIMING))
         banks = self._tables(data, "bank", keys.BANK)
         self._io(self._table(data, "io", keys.IO), data, banks)

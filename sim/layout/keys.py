@@ -1,5 +1,7 @@
 """The keys of a layout file, table by table. The reader checks by these; the reference page is made from them."""
 
+from dataclasses import replace
+
 from shared_protocol import settings_table as wire
 from shared_protocol.fields import NAME_MAX
 from sim.layout.reading import REQUIRED, Key
@@ -7,6 +9,7 @@ from sim.motor import motor_kinds
 
 SHORT_NAME = 16  # banks and lies: see the settings table
 LONGEST_INPUT_NAME = 40  # stays on the host
+MOST_BOARDS = 8
 
 REFUSED_SUPPLIES = (
     ("track", "track power is never used: it needs a supply of its own"),
@@ -21,7 +24,7 @@ REFUSED_MOTORS = (
 FILE = (
     Key("layout", "table", "What the layout is called.", REQUIRED),
     Key("supply", "table", "The supply that charges all banks.", REQUIRED),
-    Key("board", "table", "The board as a whole."),
+    Key("board", "table", "The board as a whole. With several boards `[[board]]` tables, one a board."),
     Key("timing", "table", "Timing of the queue, contacts and buttons."),
     Key("io", "table", "Pins of inputs, followers and chains."),
     Key("inputs", "table", "Names of inputs, which everything else may then use."),
@@ -32,6 +35,14 @@ FILE = (
     Key("route", "tables", "A route.", None, 0, wire.MOST_ROUTES),
     Key("button", "tables", "A button, switch or stud.", None, 0, wire.MOST_BUTTONS),
     Key("follower", "tables", "An output that follows a junction.", None, 0, wire.MOST_FOLLOWERS),
+)  # fmt: skip
+
+# With several boards inputs and outputs are each board's own, and banks, junctions and all else add up.
+FILE_OF_SEVERAL = tuple(
+    Key(key.name, "tables", key.sentence, REQUIRED, 1, MOST_BOARDS) if key.name == "board"
+    else replace(key, high=key.high * MOST_BOARDS) if key.kind == "tables" and key.high is not None
+    else key
+    for key in FILE if key.name not in ("io", "inputs", "outputs")
 )  # fmt: skip
 
 LAYOUT = (Key("name", "text", "What the layout is called.", REQUIRED, 1, 60),)
@@ -52,7 +63,21 @@ BOARD = (
     Key("restore_lies", "yes/no", "At power-up, throw the junctions back to their saved lies.", False),
     Key("route_order", "word", "Which throw of a route goes first when several banks are ready.", "as_listed",
         words=wire.ROUTE_ORDERS),
+    Key("uid", "text", "Its unique id, as `coilwarden boards` tells it. A virtual board has the id that stands here, "
+        "else `virtual-1`, `virtual-2` and so on.", None, 1, NAME_MAX),
+    Key("address", "whole", "What the address links on its harness plug say; 0 for no links. A spare with the same "
+        "address may take its place.", 0, 0, 3),
 )  # fmt: skip
+
+BOARD_OF_SEVERAL = (
+    replace(BOARD[0], default=REQUIRED),
+    *BOARD[1:],
+    Key("io", "table", "Its pins of inputs, followers and chains: `[board.io]`, keys as in `[io]`."),
+    Key("inputs", "table", "Names of its inputs: `[board.inputs]`."),
+    Key("outputs", "table", "Names of its follower outputs: `[board.outputs]`."),
+)
+# Which board a bank, button or follower belongs to.
+OWN_BOARD = Key("board", "name or number", "With several boards: the one it is on.")
 
 TIMING = (
     Key("settle_ms", "whole", "After a pulse, samples are not trusted for this time.", 5, 2, 200, "ms"),
@@ -109,6 +134,7 @@ BANK = (
     Key("driver_ohm", "number", "On-resistance of a driver (for the simulator).", 0.05, 0.001, 5, "ohm"),
     Key("diode_v", "number", "Drop of a flyback diode (for the simulator).", 0.8, 0, 40, "V"),
     Key("common_ohm", "number", "Wire that all its motors share (for the simulator).", 0.0, 0, 10, "ohm"),
+    OWN_BOARD,
 )  # fmt: skip
 
 MOTOR = (
@@ -176,6 +202,7 @@ BUTTON = (
     Key("route", "name or number", "The route it sets (`route`), or that a `rotary` position chooses."),
     Key("number", "whole", "Its number as `entrance` or `exit`.", None, 0, 63),
     Key("read_at_power_up", "yes/no", "A `switch` is read at power-up.", None),
+    replace(OWN_BOARD, sentence=OWN_BOARD.sentence + " Needed where its input's name does not tell."),
 )
 
 FOLLOWER = (
@@ -183,6 +210,7 @@ FOLLOWER = (
     Key("output", "name or number", "Its output.", REQUIRED),
     Key("junction", "name or number", "The junction it follows.", REQUIRED),
     Key("lie", "text", "The lie that switches it on (`lamp`, `frog`)."),
+    replace(OWN_BOARD, sentence=OWN_BOARD.sentence + " Needed where its output's name does not tell."),
 )
 
 # What each kind of button needs; nothing else may be given.
@@ -206,6 +234,13 @@ TABLES: tuple[tuple[str, str, tuple[Key, ...]], ...] = (
     ("[layout]", "", LAYOUT),
     ("[supply]", "One supply for all banks; two are never joined. 24 V AC is refused: it peaks at 42 V.", SUPPLY),
     ("[board]", "May be left out.", BOARD),
+    ("[[board]]", "Several boards work one layout from one file: a table for each. Inputs, outputs, pins and chains "
+     "are a board's own: `[board.io]`, `[board.inputs]` and `[board.outputs]` below its `[[board]]` take the place of "
+     "`[io]`, `[inputs]` and `[outputs]`. Every bank names its `board`; a junction is where its bank is, with all its "
+     "motors. Names of boards, banks, junctions and routes are unique in the file. A route over several boards is run "
+     "by the host, throw by throw: no button sets it, and it has no entrance and exit. A button throws only junctions "
+     "and routes of its own board, for it works without a host; a follower follows a junction of its own board. "
+     "`[supply]` and `[timing]` hold for all boards.", BOARD_OF_SEVERAL),
     ("[timing]", "May be left out.", TIMING),
     ("[io]", "May be left out where nothing is on a chain and all pins are named. Pins 0 to 22 and 26 to 28 can be "
      "used; 26 to 28 are also the ADC inputs 0 to 2.", IO),

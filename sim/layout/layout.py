@@ -1,4 +1,4 @@
-"""A layout that has been read and found right: records for the board, physics for the simulator, names for people."""
+"""A layout that has been read and found right: records for boards, physics for the simulator, names for people."""
 
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -12,29 +12,33 @@ from sim.layout.names import no_such, number_named, plain_name
 from sim.layout.physics import PhysicsLayout
 from sim.layout.records import Origin
 
+Place = tuple[int, int]
+
+
+class SeveralBoards(Exception):
+    """Something that one board has was asked of a layout with several."""
+
+    def __init__(self, names: list[str]) -> None:
+        super().__init__(f"the layout has several boards ({', '.join(names)}): choose one")
+        self.names = names
+
 
 @dataclass
-class Layout:
-    """One board's layout.
+class BoardLayout:
+    """One board's part of a layout: what the board holds, and what the simulator puts round it.
 
-    The names and `junction_words` are the owner's own, in Unicode; records and settings hold them as a board can
-    keep them: ASCII, with '?' for the rest. `junction_words` and `lie_names` have a list for each junction.
-    `origins`: where in the file each record came from, and the owner's key of each of its fields.
+    name: the owner's name for it. uid: its unique id, '' where the file names none. address: what its address links
+    say (0: no links). `origins`: where in the file each record came from, and the owner's key of each of its fields.
     """
 
-    path: Path
     name: str
     records: list[tuple[Message, list[object]]]
     settings: Settings
     physics: PhysicsLayout
-    junction_names: list[str]
-    junction_words: list[list[str]]
-    lie_names: list[list[str]]
-    bank_names: list[str]
-    route_names: list[str]
+    uid: str = ""
+    address: int = 0
     input_names: dict[str, int] = field(default_factory=dict)
     output_names: dict[str, int] = field(default_factory=dict)
-    warnings: list[str] = field(default_factory=list)
     origins: list[Origin] = field(default_factory=list)
 
     def record_bodies(self) -> list[bytes]:
@@ -47,7 +51,7 @@ class Layout:
         return Codec(board_reads()).crc_text(b"".join(body + b"\n" for body in self.record_bodies())).decode()
 
     def slot_lines(self, sequence: int = 1) -> list[bytes]:
-        """The lines of a settings slot that holds this layout."""
+        """The lines of a settings slot that holds this board's part."""
         bodies = self.record_bodies()
         return [*bodies, f"slot {sequence} {len(bodies)} {self.crc()}".encode()]
 
@@ -55,6 +59,134 @@ class Layout:
     def pins_used_and_left(self) -> tuple[int, int]:
         """Pins used and pins left."""
         return pins_used(self.settings)
+
+
+@dataclass(frozen=True)
+class Route:
+    """A route: its throws as (junction, lie), in the numbers of the whole layout.
+
+    place: the board that has it and its number there; None for a route over several boards, which the host runs.
+    """
+
+    name: str
+    throws: tuple[tuple[int, int], ...]
+    place: Place | None
+
+
+@dataclass
+class Layout:
+    """A whole layout, of one board or several. Junctions, banks, routes and buttons are numbered in the file's order.
+
+    The names and `junction_words` are the owner's own, in Unicode; records and settings hold them as a board can
+    keep them: ASCII, with '?' for the rest. `junction_words` and `lie_names` have a list for each junction.
+    junction_places, bank_places, button_places: the board of each, and its number there.
+    """
+
+    path: Path
+    name: str
+    boards: list[BoardLayout]
+    junction_names: list[str]
+    junction_words: list[list[str]]
+    lie_names: list[list[str]]
+    bank_names: list[str]
+    routes: list[Route]
+    junction_places: list[Place]
+    bank_places: list[Place]
+    button_places: list[Place]
+    warnings: list[str] = field(default_factory=list)
+
+    # ---- boards
+
+    @property
+    def only(self) -> BoardLayout:
+        """The board of a layout that has one. Raises SeveralBoards."""
+        if len(self.boards) != 1:
+            raise SeveralBoards(self.board_names)
+        return self.boards[0]
+
+    @property
+    def board_names(self) -> list[str]:
+        """The boards' names."""
+        return [board.name for board in self.boards]
+
+    def board_number(self, text: str) -> int:
+        """The number (from 0) of a board, by name or number. Raises KeyError."""
+        return _number_of(text, self.board_names, "board")
+
+    def alone(self, board: int) -> "Layout":
+        """The part of one board as a layout of its own: its routes, and its own numbers."""
+        junctions = [number for number, place in enumerate(self.junction_places) if place[0] == board]
+        own = {number: place for place, number in enumerate(junctions)}
+        return Layout(
+            self.path, self.name, [self.boards[board]],
+            [self.junction_names[number] for number in junctions],
+            [self.junction_words[number] for number in junctions],
+            [self.lie_names[number] for number in junctions],
+            [self.bank_names[number] for number, place in enumerate(self.bank_places) if place[0] == board],
+            [
+                Route(route.name, tuple((own[junction], lie) for junction, lie in route.throws), (0, route.place[1]))
+                for route in self.routes if route.place is not None and route.place[0] == board
+            ],
+            [(0, number) for number in range(len(junctions))],
+            [(0, place[1]) for place in self.bank_places if place[0] == board],
+            [(0, place[1]) for place in self.button_places if place[0] == board],
+        )  # fmt: skip
+
+    # ---- the only board
+
+    @property
+    def records(self) -> list[tuple[Message, list[object]]]:
+        """The only board's records. Raises SeveralBoards, as all below."""
+        return self.only.records
+
+    @property
+    def settings(self) -> Settings:
+        """The only board's settings."""
+        return self.only.settings
+
+    @property
+    def physics(self) -> PhysicsLayout:
+        """What the simulator puts round the only board."""
+        return self.only.physics
+
+    @property
+    def input_names(self) -> dict[str, int]:
+        """Names of the only board's inputs, and their numbers."""
+        return self.only.input_names
+
+    @property
+    def output_names(self) -> dict[str, int]:
+        """Names of the only board's follower outputs, and their numbers."""
+        return self.only.output_names
+
+    @property
+    def origins(self) -> list[Origin]:
+        """Where the only board's records came from."""
+        return self.only.origins
+
+    def record_bodies(self) -> list[bytes]:
+        """The only board's records as they go over the wire."""
+        return self.only.record_bodies()
+
+    def crc(self) -> str:
+        """CRC-32 of the only board's records."""
+        return self.only.crc()
+
+    def slot_lines(self, sequence: int = 1) -> list[bytes]:
+        """The lines of the only board's settings slot."""
+        return self.only.slot_lines(sequence)
+
+    @property
+    def pins_used_and_left(self) -> tuple[int, int]:
+        """Pins used and pins left on the only board."""
+        return self.only.pins_used_and_left
+
+    # ---- names
+
+    @property
+    def route_names(self) -> list[str]:
+        """The routes' names."""
+        return [route.name for route in self.routes]
 
     def junction_number(self, text: str) -> int:
         """The number (from 0) of a junction, by its name or its number as people count. Raises KeyError."""

@@ -11,6 +11,16 @@ if TYPE_CHECKING:
     from sim.layout.building import LayoutBuilder
 
 
+def split_throw(text: str, junctions: list[str]) -> tuple[str, str]:
+    """`junction: lie` as two texts; there must be a colon.
+
+    The owner's words may hold colons too: split where the left part is a junction, else at the last one.
+    """
+    colons = [place for place, letter in enumerate(text) if letter == ":"]
+    split = next((at for at in colons if text[:at].strip() in junctions), colons[-1])
+    return text[:split].strip(), text[split + 1 :].strip()
+
+
 class PanelBuilder:
     """Builds the records of routes, buttons and followers."""
 
@@ -55,11 +65,9 @@ class PanelBuilder:
         if ":" not in text:
             self._document.wrong(where, f"'{shown(text)}' must be written 'junction: lie'")
             return -1, -1
-        # The owner's words may hold colons too: split where the left part is a junction, else at the last one.
-        colons = [place for place, letter in enumerate(text) if letter == ":"]
-        split = next((at for at in colons if text[:at].strip() in self._junctions.names.all), colons[-1])
-        junction = self._junctions.names.find(where, text[:split].strip())
-        return junction, self._junctions.lie_of(where, junction, text[split + 1 :].strip())
+        name, lie = split_throw(text, self._junctions.names.all)
+        junction = self._junctions.names.find(where, name)
+        return junction, self._junctions.lie_of(where, junction, lie)
 
     def _entrance_and_exit(self, where: Where, route: dict[str, Any], pairs: dict[tuple[int, int], str]) -> None:
         for key, other in (("entrance", "exit"), ("exit", "entrance")):
@@ -91,7 +99,8 @@ class PanelBuilder:
                 target = button["number"]
             source = self._inputs.find((*where, "input"), button["input"]) if "input" in button else -1
             if source >= 0:
-                self._inputs.uses.claim(source, f"button {number + 1} ({button.get('kind', '')})", (*where, "input"))
+                use = f"button {self._document.numbered('button', number)} ({button.get('kind', '')})"
+                self._inputs.uses.claim(source, use, (*where, "input"))
             if not self._document.is_wrong(where) and source >= 0:
                 target_key = "number" if "number" in button else "route"
                 self._records.add(
@@ -108,7 +117,7 @@ class PanelBuilder:
         for key in needed:
             if key not in button and not self._document.is_wrong((*where, key)):
                 self._document.wrong((*where, key), f"is missing: a button of kind {kind} needs it")
-        allowed = {"kind", "input", *needed, *(["read_at_power_up"] if kind == "switch" else [])}
+        allowed = {"kind", "input", "board", *needed, *(["read_at_power_up"] if kind == "switch" else [])}
         for key in button:
             if key not in allowed:
                 self._document.wrong((*where, key), f"does not belong to a button of kind {kind}")
@@ -132,7 +141,8 @@ class PanelBuilder:
             if "output" in follower:
                 output = self._outputs.find((*where, "output"), follower["output"])
             if output >= 0:
-                self._outputs.uses.claim(output, f"follower {number + 1} ({kind})", (*where, "output"))
+                use = f"follower {self._document.numbered('follower', number)} ({kind})"
+                self._outputs.uses.claim(output, use, (*where, "output"))
             if not self._document.is_wrong(where) and output >= 0:
                 self._records.add(
                     wire.SET_FOLLOWER, where, i=number, kind=kind, output=output, j=junction, lie=max(0, lie)

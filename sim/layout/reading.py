@@ -83,6 +83,14 @@ class Document:
         """True if something in one of these tables was found wrong."""
         return any(where[: len(table)] == table for where in self._wrong for table in tables)
 
+    def numbered(self, table: str, number: int) -> int:
+        """The number (from 1) of a table of a list, as the file counts them."""
+        return number + 1
+
+    def elsewhere(self, table: str, name: str) -> str:
+        """Another board that has an input or output of this name; '' if there is none. `table`: inputs or outputs."""
+        return ""
+
     def raise_if_wrong(self) -> None:
         """Raises BadFile if anything was noted."""
         if self.problems:

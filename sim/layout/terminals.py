@@ -104,7 +104,10 @@ class Terminals:
             return self.numbers[text] if self.numbers[text] < self.count else -1
         if text.isascii() and text.isdigit():
             return int(text) if len(text) < 4 and self._check(where, int(text)) else -1
-        if self._complete:
+        other = self._document.elsewhere(self._table, text)
+        if other:
+            self._document.wrong(where, f"{self._noun} '{shown(text)}' is on board '{other}': each board has its own")
+        elif self._complete:
             self._document.wrong(where, no_such(text, list(self.numbers), f"{self._noun} named"))
         return -1
 

@@ -13,12 +13,15 @@ HIGH_READY_PERCENT = 85
 RATING_SHARE = 1.25
 
 
-def warnings_of(layout: Layout, banks: BankBuilder, stated: list[dict[str, object]]) -> list[str]:
-    """One sentence each. `stated`: the banks as their owner wrote them, without defaults."""
-    return [
-        *_of_banks(layout, banks, stated), *_of_voltages(layout, banks), *_of_junctions(layout), *_of_names(layout),
-        *_of_panel(layout),
-    ]  # fmt: skip
+def warnings_of(layout: Layout, parts: list[tuple[BankBuilder, list[dict[str, object]]]]) -> list[str]:
+    """One sentence each. `parts`: of each board its banks, and these as their owner wrote them, without defaults."""
+    found: list[str] = []
+    for number, (banks, stated) in enumerate(parts):
+        alone = layout if len(parts) == 1 else layout.alone(number)
+        found += [*_of_banks(alone, banks, stated), *_of_voltages(alone, banks), *_of_junctions(alone)]
+        found += [] if number else _of_names(layout)
+        found += _of_panel(alone)
+    return found + list(_of_stops(layout))
 
 
 def _of_banks(layout: Layout, banks: BankBuilder, stated: list[dict[str, object]]) -> Iterator[str]:
@@ -84,3 +87,14 @@ def _of_panel(layout: Layout) -> Iterator[str]:
         pair = ((wire.BUTTON_ENTRANCE, route.entrance), (wire.BUTTON_EXIT, route.exit))
         if route.entrance >= 0 and not all(end in ends for end in pair):
             yield f"route '{layout.route_names[number]}': no buttons have its entrance and exit numbers"
+
+
+def _of_stops(layout: Layout) -> Iterator[str]:
+    """A button stops its own board; people expect it to stop all."""
+    without = [
+        board.name for board in layout.boards
+        if all(button.kind != wire.BUTTON_STOP for button in board.settings.buttons)
+    ]  # fmt: skip
+    if 0 < len(without) < len(layout.boards):
+        names = ", ".join(f"'{name}'" for name in without)
+        yield f"a stop button stops its own board alone; without one: {names}"

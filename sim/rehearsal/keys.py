@@ -11,6 +11,7 @@ LONGEST_S = 25 * 3600
 
 SCENARIO = (
     Key("title", "text", "What the scenario shows.", REQUIRED),
+    Key("board", "text", "Which board of the layout, where that has several: a rehearsal runs one.", None, 1, 24),
     Key("layout", "text", "Layout file, beside the scenario or among the shipped ones; else the demo layout."),
     Key("seed", "whole", "Fixes everything random.", 1, 0, 1 << 31),
     Key("duration_s", "number", "How long it lasts.", REQUIRED, 0.1, LONGEST_S, "s"),

@@ -46,6 +46,8 @@ def overridden_layout(layout: Document, scenario: Document, table: object) -> La
             origin: Where = ("settings", name)
             own = merged.data.setdefault(name, {})
             values = check_table(scenario, origin, checked[name], own_keys)
+            if isinstance(own, list):
+                scenario.wrong(origin, "can't be changed here: the layout has several boards")
             if isinstance(own, dict):
                 merged.put(own, (name,), values, origin)
     for name, own_keys in LISTS.items():

@@ -1,6 +1,6 @@
 """The reference page of scenario files, made from the tables that check them."""
 
-from shared_protocol import words
+from shared_protocol import sentences, words
 from sim.layout.reading import Key, key_table_markdown
 from sim.rehearsal import keys
 
@@ -78,5 +78,5 @@ def _kind(key: str, word: str, sentence: str, needed: tuple[Key, ...]) -> str:
 
 def _reasons() -> str:
     rows = ["## Reasons", "", "What `why` may be.", "", "| word | meaning |", "| --- | --- |"]
-    rows += [f"| `{word}` | {text} |" for word, text in zip(words.REASONS, words.REASON_TEXTS, strict=True)]
+    rows += [f"| `{word}` | {text} |" for word, text in zip(words.REASONS, sentences.REASON_TEXTS, strict=True)]
     return "\n".join(rows) + "\n"

@@ -51,6 +51,7 @@ def load_scenario(path: Path) -> Scenario:
     document.raise_if_wrong()
     source = read_toml(_layout_path(document, data))
     layout = overridden_layout(source, document, data["settings"]) if "settings" in data else layout_of(source)
+    layout = _one_board(document, layout, data)
     resolver = _Resolver(document, layout)
     actions = resolver.steps("at", data["at"], "do", keys.ACTION, keys.ACTIONS)
     expectations = resolver.steps("expect", data["expect"], "what", keys.EXPECTATION, keys.EXPECTATIONS)
@@ -61,6 +62,21 @@ def load_scenario(path: Path) -> Scenario:
         path, data["title"], layout, data["seed"], round(data["duration_s"] * 1e6), data["charged"], data["host"],
         clock["us_ticks"], clock["ms_ticks"], actions, expectations,
     )  # fmt: skip
+
+
+def _one_board(document: Document, layout: Layout, data: dict[str, Any]) -> Layout:
+    """The board's part that the scenario names, where the layout has several. Raises BadFile."""
+    if len(layout.boards) == 1 and "board" not in data:
+        return layout
+    if "board" in data:
+        try:
+            return layout.alone(layout.board_number(data["board"]))
+        except KeyError as error:
+            document.wrong(("board",), str(error.args[0]))
+    else:
+        names = ", ".join(layout.board_names)
+        document.wrong(("board",), f"is missing: the layout has several boards, a rehearsal runs one of {names}")
+    raise BadFile(document.problems)
 
 
 def _layout_path(document: Document, data: dict[str, Any]) -> Path:

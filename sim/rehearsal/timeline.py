@@ -2,7 +2,8 @@
 
 from collections.abc import Callable
 
-from shared_protocol.words import FAULT_TEXTS, FAULTS, REASON_TEXTS, REASONS
+from shared_protocol.sentences import FAULT_TEXTS, REASON_TEXTS
+from shared_protocol.words import FAULTS, REASONS
 from sim.layout import Layout
 from sim.rehearsal.expectations import Heard
 

@@ -51,6 +51,7 @@ class BenchBoard(Board):
         self.pulse_count = 0
         self.slots: "dict[int, list[bytes]]" = {}
         self._open = -1
+        self._reading: "list[bytes]" = []
         self.settings: object = None
         self.settle_ms = 5
         self.gap_ms = 20
@@ -187,8 +188,12 @@ class BenchBoard(Board):
         self.out_count += 1
         return True
 
-    def slot_lines(self, slot: int) -> "list[bytes]":
-        return list(self.slots.get(slot, []))
+    def slot_rewind(self, slot: int) -> bool:
+        self._reading = list(self.slots.get(slot, []))
+        return slot in self.slots
+
+    def slot_line(self) -> bytes:
+        return self._reading.pop(0) if self._reading else b""
 
     def slot_begin(self, slot: int) -> bool:
         self._open = slot

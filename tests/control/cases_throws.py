@@ -4,6 +4,8 @@ from bench import Bench
 from bench_board import BenchBoard
 from bench_layouts import BenchLayout, bank_records, board_records, junction_records, motor_record, two_lies, usual
 
+from device.control.throws import THROWS
+
 
 def outcome_of(bench: Bench, number: int) -> "tuple[object, object]":
     """Outcome and reason of a throw, (None, None) while there is none."""
@@ -460,14 +462,14 @@ def case_a_kept_message_is_sent_once_if_it_is_acknowledged() -> None:
 def case_the_queue_says_when_it_is_full() -> None:
     bench = ready(None, 11_000, 11_000)
     numbers = []
-    for _ in range(42):
+    for _ in range(THROWS + 2):
         numbers.append(bench.throw(0, 1, 2000))
         bench.run(30)
     bench.run(400)
     assert [outcome_of(bench, number)[1] for number in numbers[-2:]] == ["queue_full", "queue_full"]
     bench.keep_alive(3000)
     outcomes = [outcome_of(bench, number)[0] for number in numbers]
-    assert outcomes == ["expired"] * 40 + ["refused"] * 2
+    assert outcomes == ["expired"] * THROWS + ["refused"] * 2
 
 
 def case_leave_finishes_the_pulse_and_cancels_the_queue() -> None:

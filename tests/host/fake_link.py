@@ -59,16 +59,16 @@ class FakeLink:
         Codec(host_reads()).encode(message, values)
         self.received.put(Received(message, values, b"", ""))
 
-    def connects(self, boot: int = 7, crc: str = CRC, uid: str = "one") -> None:
+    def connects(self, boot: int = 7, crc: str = CRC, uid: str = "one", caps: str = "", kind: str = "test") -> None:
         """The first exchange."""
         self.connected = True
         self.error = None
         self.received.put(LinkChange("connected", "connected to fake"))
-        self.greets(boot, crc, uid)
+        self.greets(boot, crc, uid, caps, kind)
 
-    def greets(self, boot: int = 7, crc: str = CRC, uid: str = "one") -> None:
+    def greets(self, boot: int = 7, crc: str = CRC, uid: str = "one", caps: str = "", kind: str = "test") -> None:
         """The board answers hello."""
-        self.says(messages.BOARD, v=1, fw="1.0.0", kind="test", uid=uid, boot=boot, crc=crc, caps="")
+        self.says(messages.BOARD, v=1, fw="1.0.0", kind=kind, uid=uid, boot=boot, crc=crc, caps=caps)
 
     def breaks(self) -> None:
         """The cable is out."""

@@ -169,7 +169,7 @@ def test_a_route_tells_each_throw_and_its_end(on_board: Run) -> None:
 def test_status_json_keys(on_board: Run) -> None:
     said = json.loads(on_board("status", "--json")[1])
     assert set(said) == {
-        "go", "board", "settings_match", "stopped", "banks", "junctions", "queue", "faults",
+        "go", "board", "boards", "settings_match", "stopped", "banks", "junctions", "queue", "faults",
     }  # fmt: skip
     assert len(said["banks"]) == 2 and all(bank["mv"] > 0 for bank in said["banks"])
 
@@ -295,7 +295,7 @@ def test_bad_usage_is_status_2(alone: Run, argv: tuple[str, ...]) -> None:
 
 
 def test_card_fits_a_page_and_has_every_fault_and_lie(alone: Run) -> None:
-    from shared_protocol.words import FAULT_TEXTS
+    from shared_protocol.sentences import FAULT_TEXTS
 
     status, out, _ = alone("settings", "card", "--layout", str(demo_layout_path()))
     assert status == 0 and max(len(line) for line in out.splitlines()) <= 80

@@ -90,8 +90,8 @@ def paths_of(value: Any, where: Where = ()) -> list[Where]:
 
 # ---- any TOML: a writer that puts line ends where it likes and keeps the lines of all that it writes
 
-KEYS = st.text("ab_-", min_size=1, max_size=3) | st.text('a. "\'[]{}=#\\\u00e9', min_size=1, max_size=4)
-SCALARS = st.integers(-5, 5) | st.booleans() | st.text('x\\"\'[]{},=# \u00e9', max_size=6)
+KEYS = st.text("ab_-", min_size=1, max_size=3) | st.text("a. \"'[]{}=#\\\u00e9", min_size=1, max_size=4)
+SCALARS = st.integers(-5, 5) | st.booleans() | st.text("x\\\"'[]{},=# \u00e9", max_size=6)
 VALUES = st.recursive(
     SCALARS, lambda inner: st.lists(inner, max_size=3) | st.dictionaries(KEYS, inner, max_size=3), max_leaves=8
 )
