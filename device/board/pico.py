@@ -223,7 +223,12 @@ class PicoBoard(Board):
             return False
         if mv != self._least_mv[bank]:
             self._set_least(bank, mv)
-        return self._sampler.reaches(self._channels[bank], self._least[bank])
+        sampler = self._sampler
+        if not sampler.reaches(self._channels[bank], self._least[bank]):
+            return False
+        # The mean that is asked for next is of now.
+        sampler.channel = -1
+        return True
 
     def _set_least(self, bank: int, mv: int) -> None:
         """The least reading that means `mv`: the same sum as in bank_low_mv, the other way round."""

@@ -35,6 +35,8 @@ IDLE_US = 20_000
 SOON_US = 1000
 # What a tick may spend on slices before it goes on (the last one begun is finished).
 SLICES_US = 60
+# While a crossing is near, the link is looked at this often.
+NEAR_MS = 4
 # Garbage is collected when nothing is due for this long (see Board.collect).
 COLLECT_IDLE_US = 10_000
 # When told to leave: the outcomes get this long to go out.
@@ -144,11 +146,13 @@ class Controller:
         now_ms = board.ticks_ms()
         queue = self.queue
         hot = queue is not None and queue.dispatch.hot
-        if hot and now_ms == self._last_ms:
-            # Nothing but the voltages, until the next millisecond.
+        if hot:
             assert queue is not None
-            queue.dispatch.tick(now_ms)
-            return
+            passed_ms = now_ms - self._last_ms
+            if 0 <= passed_ms < (NEAR_MS if queue.dispatch.near else 1):
+                # Nothing but the voltages, until the next millisecond (or a few, if the crossing is near).
+                queue.dispatch.tick(now_ms)
+                return
         self._last_ms = now_ms
         begun_us = board.ticks_us()
         endpoint = self.endpoint

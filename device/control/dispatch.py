@@ -65,6 +65,7 @@ class Dispatch:
         # Of each bank: the throw whose only obstacle is the voltage.
         self._armed: "list[Throw | None]" = [None] * len(plant.banks)
         self.hot = False
+        self.near = False
         self._near_ms = -1
         self._due_ms = 0
         self._left_ms = LOOK_MS
@@ -81,6 +82,7 @@ class Dispatch:
         """Move every throw on; start what may start."""
         if self._throws.count == 0:
             self.hot = False
+            self.near = False
             self._near_ms = -1
         elif self._plant.changes.happened or elapsed(now_ms, self._due_ms) >= 0:
             self._look_at_all(now_ms)
@@ -110,10 +112,12 @@ class Dispatch:
         if gate.mean_mv + (gate.settings.full_mv >> NEAR_SHIFT) >= self._plans[bank].ready_mv:
             if elapsed(now_ms, self._near_ms) >= 2 * HOLD_MS or self._near_ms < 0:
                 self._near_ms = now_ms
+                self.near = True
 
     def holds(self, now_ms: int) -> bool:
         """True while a crossing is so near that only it matters."""
-        return self.hot and self._near_ms >= 0 and 0 <= elapsed(now_ms, self._near_ms) < HOLD_MS
+        self.near = self.hot and self._near_ms >= 0 and 0 <= elapsed(now_ms, self._near_ms) < HOLD_MS
+        return self.near
 
     def _look_at_all(self, now_ms: int) -> None:
         plant = self._plant

@@ -141,6 +141,7 @@ class Firing:
         self.fired += 1
         throw.mv = mean_mv
         gate.pulse_begins(throw.junction, mean_mv)
+        self._plant.watches[plan.bank].begin(True)
         throw.state = THROW_PULSE
         throw.fired = True
         throw.bank = plan.bank

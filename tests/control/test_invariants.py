@@ -135,7 +135,8 @@ class Machine(RuleBasedStateMachine):
         throws = self.bench.controller.queue.throws.order[:count]  # type: ignore[union-attr]
         assert not [throw for throw in throws if throw.origin == 0 and throw.state == 0]
         before = self.bench.board.pulse_count
-        self.bench.hello()
+        self.bench.send("hello", v=1)
+        self.let_pass(20)
         self.bench.send("ask", what="status")
         self.let_pass(40)
         assert self.bench.board.pulse_count - before <= sum(throw.origin == 1 for throw in throws)
@@ -153,7 +154,8 @@ class Machine(RuleBasedStateMachine):
         self.bench.on_pulse = on_pulse
         self.asked = {}
         self.stopped = False
-        self.bench.hello()
+        self.bench.send("hello", v=1)
+        self.let_pass(20)
         self.bench.send("throw", id=1, j=0, lie=1, wait=0, boot=board.boot - 1)
         self.let_pass(30)
         refused = self.bench.outcome(1)
