@@ -119,6 +119,7 @@ class Fleet:
     def _merge(self, now_s: float) -> None:
         self.model.steps.update(self._routes.step_of())
         self.model.own_items = self._routes.waiting(now_s)
+        self.model.trouble = next((port.text for port in self.ports if port.text), "")
         self.model.merge(now_s)
 
     def wait_for(self, predicate: Callable[[], bool], timeout_s: float) -> bool:
@@ -147,9 +148,9 @@ class Fleet:
         if any(session.status_whole for session in self._sessions):
             return
         errors = [link.error for link in self.links if link.error is not None]
-        texts = [port.text for port in self.ports if port.hello is not None and port.text]
-        if texts:
-            raise LinkError(self.links[0].port, texts[0], "give the ids or addresses of the boards in the layout file")
+        strange = [port for port in self.ports if port.hello is not None and port.text]
+        if strange:
+            raise LinkError(strange[0].name, strange[0].text, "see 'coilwarden boards', and the ids in the layout file")
         if errors:
             raise errors[0]
         raise LinkError(self.links[0].port, "the board does not tell its status", "reset it, then try again")

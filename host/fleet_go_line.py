@@ -11,15 +11,20 @@ if TYPE_CHECKING:
 _WORST_FIRST = ("stop", "out", "lost", "wait", "go")
 
 
-def fleet_go_line(parts: "list[BoardPart]", now_s: float) -> GoLine:
-    """One sentence: no board at all, a board that is missing or can't be used, else what matters most of the rest."""
+def fleet_go_line(parts: "list[BoardPart]", now_s: float, trouble: str = "") -> GoLine:
+    """One sentence: no board at all, a board that is missing or can't be used, else what matters most of the rest.
+
+    trouble: what is wrong at a port, for where no board is there.
+    """
     here = [part for part in parts if part.model.is_connected]
     if not here:
         found = [go_line(part.model, now_s) for part in parts]
         told = next((part.model.connection for part in parts if part.model.connection.state == "lost"), None)
         if len(parts) == 1 or told is not None:
+            if told is None and trouble:
+                return GoLine("lost", trouble)
             return found[0] if told is None or len(parts) == 1 else GoLine("lost", f"no board is there: {told.text}")
-        return GoLine("lost", f"looking for the {len(parts)} boards")
+        return GoLine("lost", trouble or f"looking for the {len(parts)} boards")
     rest = _worst([part for part in here if not part.hindrance], len(parts) > 1, now_s)
     hindered = [part.missing or part.hindrance for part in parts if part.hindrance]
     if not hindered:

@@ -127,8 +127,8 @@ def _things(settings: Settings) -> list[object]:
 class FleetModel(LayoutModel):
     """What all boards said. `merge` brings it up to date; nothing is applied to it directly.
 
-    own_items: throws of routes that the host runs, which no board knows of yet. own_outcomes: what the host says of
-    its own requests. steps: which throw of a board, by board and number, is which step of such a route.
+    trouble: what is wrong at the first port where something is. own_items: throws of routes that the host runs, which
+    no board knows of yet. steps: which throw of a board, by board and number, is which step of such a route.
     """
 
     def __init__(self, layout: "Layout", parts: list[BoardPart]) -> None:
@@ -137,6 +137,7 @@ class FleetModel(LayoutModel):
         self.parts = parts
         self.own_items: list[QueueItem] = []
         self.steps: dict[tuple[int, int], tuple[int, int]] = {}
+        self.trouble = ""
         self.settings = parts[0].layout.settings
         self.settings_source = "file"
         self._plans = [plan_of(part.layout.settings) for part in parts]
@@ -177,7 +178,7 @@ class FleetModel(LayoutModel):
 
     def go_line(self, now_s: float) -> GoLine:
         """Can I go? One sentence."""
-        return fleet_go_line(self.parts, now_s)
+        return fleet_go_line(self.parts, now_s, self.trouble)
 
     # ---- merging
 

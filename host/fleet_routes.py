@@ -175,7 +175,7 @@ class HostRoutes:
             if hindrance:
                 return hindrance
             if self._boards.losses_of(board) != run.losses[board]:
-                return f"board {self._boards.name_of(board)} was lost meanwhile"
+                return f"board {self._boards.name_of(board)} was lost or has restarted meanwhile"
             if self._boards.is_stopped(board):
                 run.ending = run.ending or ("cancelled", "stop", "")
         return ""

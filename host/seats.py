@@ -19,6 +19,7 @@ from shared_protocol.fields import Message
 
 _ADDRESS = re.compile(r"\baddress ([0-3])\b")
 VIRTUAL = "virtual"
+TWINS = "two boards say that they are"
 
 Note = Callable[[str, str], None]
 
@@ -41,12 +42,16 @@ class SeatLayout(Protocol):
 
 @dataclass
 class Port:
-    """One port and who is there. `text` says why what is there has no seat; hello: its part of the first exchange."""
+    """One port and who is there. `text` says why what is there has no seat, or why nothing is there.
+
+    hello: the board's part of the first exchange. seen: a board was there once.
+    """
 
     link: LinkLike
     hello: Received | None = None
     seat: "Seat | None" = None
     text: str = ""
+    seen: bool = False
 
     @property
     def name(self) -> str:
@@ -143,13 +148,15 @@ class Seating:
                 return  # who is there is told next
             gone = port.hello is not None
             port.hello = None
+            if not gone and item.text != port.text and (item.state == "refused" or not port.seen):
+                self._note("bad" if item.state == "refused" else "warn", item.text)
             port.text = "" if gone else item.text
             self._leave(port, item)
             if gone:
                 self._look_again()
         elif item.message is messages.BOARD and not item.fault:
             changed = port.hello is None or port.uid != item.name("uid")
-            port.hello = item
+            port.hello, port.seen = item, True
             if changed or port.seat is None:
                 self._place(port)
             else:
@@ -167,7 +174,7 @@ class Seating:
         if text != port.text:
             port.text = text
             if text:
-                self._note("bad", text)
+                self._note("bad", text if text.startswith(TWINS) else f"{port.name}: {text}")
         if port.seat is not None and port.seat is not seat:
             self._leave(port, LinkChange("lost", text or "another board is there now"))
         if seat is None or port.seat is seat:
@@ -215,7 +222,7 @@ class Seating:
         twins = [other for other in self.ports if other.hello is not None and other.uid == port.uid]
         if len(twins) > 1:
             where = " and ".join(sorted(twin.name for twin in twins))
-            text = f"two boards say that they are '{port.uid}' ({where}): neither is used; unplug one"
+            text = f"{TWINS} '{port.uid}' ({where}): neither is used; unplug one"
             for twin in twins:
                 if twin is not port and twin.text != text:
                     twin.text = text
@@ -231,9 +238,7 @@ class Seating:
         """The board itself goes before a spare, unless its address says that the harness is on the spare."""
         address = seat.layout.address
         if seat.taken_by not in (None, port) and address and port.address != address and not port.is_virtual:
-            return None, (
-                f"{port.name}: board {seat.name} says address {port.address}, its spare {address}: the spare is used"
-            )
+            return None, (f"board {seat.name} says address {port.address}, its spare {address}: the spare is used")
         return seat, ""
 
     def _spare_seat(self, port: Port) -> tuple[Seat | None, str]:
@@ -247,4 +252,4 @@ class Seating:
             why = f"address {port.address} does not tell whose place it could take"
         else:
             why = f"no board has its address {port.address}"
-        return None, f"{port.name}: the layout file does not name the board '{port.uid}', and {why}"
+        return None, f"the layout file does not name the board '{port.uid}', and {why}"

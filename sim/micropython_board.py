@@ -27,7 +27,17 @@ FUEL_TO_STEP = 1 << 34
 GUEST_FILES = ("__init__.py", "exchange.py", "virtual_board.py")
 SLOTS = 3
 # Of the firmware, what is of use on hardware alone, and what only a host needs.
-HARDWARE_FILES = ("pico.py", "boot.py", "chains.py", "notes.py", "pulser.py", "sampler.py", "traces.py", "wiring.py")
+HARDWARE_FILES = (
+    "pico.py",
+    "boot.py",
+    "chains.py",
+    "notes.py",
+    "pulser.py",
+    "sampler.py",
+    "traces.py",
+    "wiring.py",
+    "self_test.py",
+)
 
 
 class GuestDied(RuntimeError):

@@ -437,3 +437,10 @@ def make_board() -> PicoBoard:
     """The board that this runs on."""
     chip = Chip(os.uname().machine)
     return PicoBoard(chip, Notes(machine, os, sys, chip))
+
+
+def self_test() -> None:
+    """At the prompt: tests the board without firing, and prints a line for each test (host: `board check`)."""
+    from device.board.self_test import SelfTest
+
+    SelfTest(machine, rp2, uctypes, array.array, gc, os, time, Chip(os.uname().machine)).run(sys.stdout.write)

@@ -66,7 +66,7 @@ def _layout_if_good(args: argparse.Namespace) -> "Layout | None":
 def _stop(args: argparse.Namespace, hosts: "list[Host]") -> int:
     """Tell each board once, as soon as it is there; what each one answers."""
     boards = [
-        (common.who_is(part) if part.name or len(hosts) == 1 else part.session.link.port, part.session)
+        (common.who_is(part) if part.name or len(hosts) == 1 else part.session.link.port, host, part.session)
         for host in hosts for part in host.parts
     ]  # fmt: skip
     sent: set[int] = set()
@@ -76,16 +76,16 @@ def _stop(args: argparse.Namespace, hosts: "list[Host]") -> int:
     def is_sent() -> bool:
         for host in hosts[1:]:
             host.poll()
-        for place, (_, session) in enumerate(boards):
+        for place, (_, _, session) in enumerate(boards):
             # It sends nothing and says so while the board is not there.
             if place not in sent and session.stop():
                 sent.add(place)
-        return len(sent) == len(boards) or all(host.all_told for host in hosts)
+        return all(place in sent or host.all_told for place, (_, host, _) in enumerate(boards))
 
     def is_answered() -> bool:
         for host in hosts[1:]:
             host.poll()
-        return all("stop" in boards[place][1].model.answers for place in sent)
+        return all("stop" in boards[place][2].model.answers for place in sent)
 
     hosts[0].wait_for(is_sent, common.CONNECT_S)
     if not sent:
@@ -93,7 +93,7 @@ def _stop(args: argparse.Namespace, hosts: "list[Host]") -> int:
             "stop: not sent, no board of the layout is there"
         )
     hosts[0].wait_for(is_answered, REQUEST_S)
-    return _tell_stop(args, [(who, session.model.answers.get("stop")) for who, session in boards])
+    return _tell_stop(args, [(who, session.model.answers.get("stop")) for who, _, session in boards])
 
 
 def _tell_stop(args: argparse.Namespace, found: "list[tuple[str, AnswerView | None]]") -> int:

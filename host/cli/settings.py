@@ -8,12 +8,14 @@ from typing import TYPE_CHECKING, Any
 from host.cli import common
 from host.cli.common import BAD, DONE, NO, Wrong, complain, say, say_json
 from shared_protocol.codec import Codec, plain
+from shared_protocol.fields import NAME
 from shared_protocol.registry import board_reads
 
 if TYPE_CHECKING:
     from host.cli.common import Host
     from host.model import Records
     from host.session import Part
+    from shared_protocol.fields import Field
     from shared_protocol.settings import Settings
     from sim.layout import BoardLayout, Layout
 
@@ -140,16 +142,13 @@ def run_show(args: argparse.Namespace) -> int:
             say(f"# board {name}")
         for message, values in records:
             shown = plain(message, values)
-            units = {field.key: field.unit for field in message.fields}
-            parts = [f"{key} {_shown(value, units[key])}" for key, value in shown.items()]
+            parts = [f"{field.key} {_shown(shown[field.key], field)}" for field in message.fields]
             say(f"{message.name}: " + ", ".join(parts))
     return DONE
 
 
-def _shown(value: object, unit: str) -> str:
-    if isinstance(value, str):
-        return f"'{value}'" if unit == "bytes" else value
-    return f"{value} {unit}".rstrip()
+def _shown(value: object, field: "Field") -> str:
+    return f"'{value}'" if field.kind == NAME else f"{value} {field.unit}".rstrip()
 
 
 def run_check(args: argparse.Namespace) -> int:

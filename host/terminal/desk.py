@@ -98,7 +98,7 @@ class Desk:
     @property
     def counts_down(self) -> bool:
         """True while something on the screen counts down."""
-        return bool(self.model.queue) or any(bank.state != "ready" for bank in self.model.banks)
+        return bool(self.model.queue) or any(bank.state != "ready" and not bank.lost for bank in self.model.banks)
 
     # ---- typing
 

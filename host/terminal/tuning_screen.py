@@ -98,6 +98,11 @@ class TuningScreen(DeskScreen[None]):
         """What it has said, in its own numbers."""
         return self._part.session.model
 
+    @property
+    def _whom(self) -> str:
+        """The board, for sentences."""
+        return f"board {self._part.name}" if self._part.name else "the board"
+
     def action_next_board(self) -> None:
         """The next board of the layout, unless settings are under way."""
         if self._tuning.sending or len(self._tunings) < 2:
@@ -296,7 +301,10 @@ class TuningScreen(DeskScreen[None]):
             return
         self.desk_app.push_screen(
             AskScreen(
-                "Old and new - send to the board?", self._change_rows, ("enter",), "Enter send  Esc back  SPACE stop"
+                f"Old and new - send to {self._whom}?",
+                self._change_rows,
+                ("enter",),
+                "Enter send  Esc back  SPACE stop",
             ),
             self._reviewed,
         )

@@ -240,7 +240,8 @@ TABLES: tuple[tuple[str, str, tuple[Key, ...]], ...] = (
      "motors. Names of boards, banks, junctions and routes are unique in the file. A route over several boards is run "
      "by the host, throw by throw: no button sets it, and it has no entrance and exit. A button throws only junctions "
      "and routes of its own board, for it works without a host; a follower follows a junction of its own board. "
-     "`[supply]` and `[timing]` hold for all boards.", BOARD_OF_SEVERAL),
+     "`[supply]` and `[timing]` hold for all boards; limits such as 3 banks and 64 junctions are each board's. "
+     "The shipped layout Reedholme shows two boards.", BOARD_OF_SEVERAL),
     ("[timing]", "May be left out.", TIMING),
     ("[io]", "May be left out where nothing is on a chain and all pins are named. Pins 0 to 22 and 26 to 28 can be "
      "used; 26 to 28 are also the ADC inputs 0 to 2.", IO),

@@ -21,7 +21,7 @@ def warnings_of(layout: Layout, parts: list[tuple[BankBuilder, list[dict[str, ob
         found += [*_of_banks(alone, banks, stated), *_of_voltages(alone, banks), *_of_junctions(alone)]
         found += [] if number else _of_names(layout)
         found += _of_panel(alone)
-    return found + list(_of_stops(layout))
+    return [*found, *_of_ids(layout), *_of_stops(layout)]
 
 
 def _of_banks(layout: Layout, banks: BankBuilder, stated: list[dict[str, object]]) -> Iterator[str]:
@@ -87,6 +87,14 @@ def _of_panel(layout: Layout) -> Iterator[str]:
         pair = ((wire.BUTTON_ENTRANCE, route.entrance), (wire.BUTTON_EXIT, route.exit))
         if route.entrance >= 0 and not all(end in ends for end in pair):
             yield f"route '{layout.route_names[number]}': no buttons have its entrance and exit numbers"
+
+
+def _of_ids(layout: Layout) -> Iterator[str]:
+    """Of several boards each must be told from the others, whatever port it is plugged into."""
+    addresses = [board.address for board in layout.boards]
+    for board in layout.boards:
+        if len(layout.boards) > 1 and not board.uid and addresses.count(board.address) > 1:
+            yield f"board '{board.name}': without uid, or an address of its own, a real board can't be told from others"
 
 
 def _of_stops(layout: Layout) -> Iterator[str]:

@@ -238,9 +238,7 @@ class Board:
     """One board: `boot` it, `advance` it, `send` it bytes and read `console`."""
 
     def __init__(self, image, filesystem=None):
-        self.device = MicroPythonDevice(
-            board=BoardSpec(image=image, layout=LAYOUT), filesystem=filesystem
-        )
+        self.device = MicroPythonDevice(board=BoardSpec(image=image, layout=LAYOUT), filesystem=filesystem)
         self.mcu, self.simulator = self.device.mcu, self.device.simulator
         self.cdc = self.device.cdc
         self.clock = self.simulator.clock
@@ -277,7 +275,9 @@ class Board:
         end = self.micros + limit_micros
         while not condition():
             if self.micros >= end:
-                raise TimeoutError(f"not within {limit_micros:.0f} us emulated; console tail {bytes(self.console[-200:])!r}")
+                raise TimeoutError(
+                    f"not within {limit_micros:.0f} us emulated; console tail {bytes(self.console[-200:])!r}"
+                )
             self.advance(slice_micros)
 
     def at(self, delay_micros, callback):

@@ -1,7 +1,6 @@
 """The firmware on an emulated RP2040: runs where COILWARDEN_UF2 names a MicroPython UF2 for that chip."""
 
 import os
-from pathlib import Path
 
 import pytest
 

@@ -2,6 +2,7 @@
 
 import json
 from collections.abc import Callable, Iterator
+from dataclasses import replace
 from pathlib import Path
 
 import pytest
@@ -9,7 +10,7 @@ import pytest
 from host.cli import boards as cli_boards
 from host.cli.main import main
 from sim.layout import demo_layout_path, load_layout
-from sim.serving import VirtualBoards
+from sim.serving import VirtualBoards, VirtualServer
 from tests.host.fleet_bench import REEDHOLME
 from tests.host.scripted_board import wait_until
 
@@ -133,7 +134,7 @@ def test_without_port_all_boards_found_are_tried(
     run: Run, served: VirtualBoards, monkeypatch: pytest.MonkeyPatch
 ) -> None:
     monkeypatch.setattr(cli_boards, "likely_ports", lambda: served.urls)
-    status, out, _ = run("status", "--json", *LAYOUT)
+    out = run("status", "--json", *LAYOUT)[1]
     assert [row["connected"] for row in json.loads(out)["boards"]] == [True, True]
 
 
@@ -196,7 +197,7 @@ def test_virtual_wants_room_for_its_ports(run: Run) -> None:
 
 def test_a_rehearsal_runs_one_board_of_the_layout(run: Run, tmp_path: Path) -> None:
     text = (
-        'title = "Yard"\nlayout = "reedholme.toml"\nduration_s = 2\n[[at]]\ntime_s = 0.1\ndo = "route"\n'
+        'title = "Yard"\nlayout = "reedholme.toml"\nduration_s = 3\n[[at]]\ntime_s = 1.0\ndo = "route"\n'
         'route = "Yard shunt"\nlabel = "shunt"\n[[expect]]\nwhat = "route"\nlabel = "shunt"\noutcome = "done"\n'
     )
     path = tmp_path / "one.toml"
@@ -209,3 +210,28 @@ def test_a_rehearsal_runs_one_board_of_the_layout(run: Run, tmp_path: Path) -> N
     path.write_text(text.replace("duration_s", 'board = "Yerd"\nduration_s'), "utf-8")
     status, _, err = run("rehearse", str(path))
     assert status == 2 and ":3: board: there is no board 'Yerd'; did you mean 'Yard'" in err
+
+
+def test_one_board_whose_id_the_file_names(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """It works as one board does; another board is not taken for it."""
+    text = demo_layout_path().read_text("utf-8")
+    path = tmp_path / "named.toml"
+    path.write_text(text.replace("[board]\n", '[board]\nuid = "Q-1"\naddress = 3\n'), "utf-8")
+    layout = load_layout(path)
+    for uid, address, good in (("Q-1", 3, True), ("Q-2", 1, False)):
+        board = replace(layout.only, address=address)
+        with VirtualServer(board, uid=uid) as server:
+            where = ("--layout", str(path), "--port", f"socket://127.0.0.1:{server.port}")
+            status = main(["throw", "Throat", "to platform 2", *where])
+            out, err = capsys.readouterr()
+            if not good:
+                assert status == 2 and "does not name the board 'Q-2', and no board has its address 1" in err
+                continue
+            assert status == 0 and out.startswith("Throat, to platform 2: done")
+            assert wait_until(lambda: not server.script.attached.is_set())
+            assert main(["status", *where]) == 0
+            out, _ = capsys.readouterr()
+            assert "board" not in out.splitlines()[0] and out.splitlines()[1].startswith("bank West: ")
+            assert wait_until(lambda: not server.script.attached.is_set())
+            assert main(["settings", "compare", *where, "--json"]) == 0
+            assert json.loads(capsys.readouterr()[0]) == {"same": True, "differences": []}

@@ -132,7 +132,21 @@ def test_a_board_that_came_and_went_between_two_looks_is_lost_too() -> None:
     bench.fleet.poll()
     bench.ends(1, newest(bench, 1), 0, 0, "cancelled", "operator")
     ended = bench.fleet.outcome_of(number)
-    assert ended is not None and ended.outcome == "failed" and "board Terminus was lost meanwhile" in ended.text
+    assert ended is not None and ended.outcome == "failed" and "board Terminus was lost or has restarted" in ended.text
+
+
+def test_a_board_that_has_restarted_knows_nothing_of_the_route() -> None:
+    bench = Bench().both()
+    number = bench.fleet.route(ROAD_1, 4000)
+    bench.links[0].greets(8, bench.layout.boards[0].crc(), "virtual-1", "address 1")
+    bench.fleet.poll()
+    assert len(bench.sent(1, "cancel")) == 1
+    bench.ends(1, newest(bench, 1), 1, 1)
+    ended = bench.fleet.outcome_of(number)
+    assert ended is not None and (ended.outcome, ended.done) == ("failed", 1)
+    assert "board Terminus was lost or has restarted" in ended.text
+    bench.passes(1.0)
+    assert asked(bench) == STEPS[:1]
 
 
 def test_nothing_fires_if_a_board_is_missing_or_stopped_at_the_start() -> None:

@@ -92,69 +92,71 @@ def test_losing_a_board_in_the_middle_of_a_route_and_finding_it_again() -> None:
 
 def test_a_stop_reaches_both_boards() -> None:
     layout = load_layout(REEDHOLME)
-    with VirtualBoards(layout) as boards:
-        with fleet_at(layout, *[server.port for server in boards.servers]) as fleet:
-            assert fleet.wait_for(lambda: is_ready(fleet), LIMIT_S)
-            assert fleet.stop()
-            assert fleet.wait_for(lambda: "stop" in fleet.model.answers, LIMIT_S)
-            assert fleet.model.answers["stop"].ok
-            assert fleet.wait_for(lambda: all(part.model.stopped for part in fleet.boards), LIMIT_S)
-            for junction in (THROAT, ENTRY):
-                number = fleet.throw(junction, 1, 5000)
-                assert outcome_of(fleet, number) == "refused"
-            assert [pulses(server) for server in boards.servers] == [[], []]
-            fleet.release()
-            assert fleet.wait_for(lambda: is_ready(fleet), LIMIT_S)
-            assert outcome_of(fleet, fleet.throw(ENTRY, 1, 5000)) == "done"
+    with VirtualBoards(layout) as boards, fleet_at(layout, *[each.port for each in boards.servers]) as fleet:
+        assert fleet.wait_for(lambda: is_ready(fleet), LIMIT_S)
+        assert fleet.stop()
+        assert fleet.wait_for(lambda: "stop" in fleet.model.answers, LIMIT_S)
+        assert fleet.model.answers["stop"].ok
+        assert fleet.wait_for(lambda: all(part.model.stopped for part in fleet.boards), LIMIT_S)
+        for junction in (THROAT, ENTRY):
+            number = fleet.throw(junction, 1, 5000)
+            assert outcome_of(fleet, number) == "refused"
+        assert [pulses(server) for server in boards.servers] == [[], []]
+        fleet.release()
+        assert fleet.wait_for(lambda: is_ready(fleet), LIMIT_S)
+        assert outcome_of(fleet, fleet.throw(ENTRY, 1, 5000)) == "done"
 
 
 def test_a_spare_takes_over(tmp_path: Path) -> None:
     layout = with_ids(tmp_path, "T-1", "Y-1")
     terminus, yard = layout.boards
-    with served((terminus, "T-1"), (yard, "Y-1"), (yard, "S-9")) as servers:
-        with fleet_at(layout, *[server.port for server in servers]) as fleet:
-            assert fleet.wait_for(lambda: is_ready(fleet), LIMIT_S)
-            seat = fleet.boards[YARD].seat
-            assert fleet.wait_for(lambda: seat.taken_by is not None and seat.taken_by.uid == "Y-1", LIMIT_S)
-            servers[1].close()
-            assert fleet.wait_for(lambda: seat.spare and is_ready(fleet), LIMIT_S)
-            assert outcome_of(fleet, fleet.throw(ENTRY, 1, 5000)) == "done"
-            assert len(pulses(servers[2])) == 1 and pulses(servers[1]) == []
-            assert outcome_of(fleet, fleet.route(ROAD_1, 5000)) == "done"
+    with ExitStack() as stack:
+        servers = stack.enter_context(served((terminus, "T-1"), (yard, "Y-1"), (yard, "S-9")))
+        fleet = stack.enter_context(fleet_at(layout, *[server.port for server in servers]))
+        assert fleet.wait_for(lambda: is_ready(fleet), LIMIT_S)
+        seat = fleet.boards[YARD].seat
+        assert fleet.wait_for(lambda: seat.taken_by is not None and seat.taken_by.uid == "Y-1", LIMIT_S)
+        servers[1].close()
+        assert fleet.wait_for(lambda: seat.spare and is_ready(fleet), LIMIT_S)
+        assert outcome_of(fleet, fleet.throw(ENTRY, 1, 5000)) == "done"
+        assert len(pulses(servers[2])) == 1 and pulses(servers[1]) == []
+        assert outcome_of(fleet, fleet.route(ROAD_1, 5000)) == "done"
 
 
 def test_a_spare_with_other_settings_gets_them_first(tmp_path: Path) -> None:
     layout = with_ids(tmp_path, "T-1", "Y-1")
     terminus, yard = layout.boards
-    with served((terminus, "T-1"), (yard, "S-9")) as servers:
-        with fleet_at(layout, *[server.port for server in servers]) as fleet:
-            assert fleet.wait_for(lambda: is_ready(fleet), LIMIT_S)
-            session = fleet.parts[YARD].session
-            tuned = [(message, list(values)) for message, values in yard.records]
-            for message, values in tuned:
-                if message.name == "set_timing":
-                    values[message.position("pause_ms")] = 250
-            first = session.send_settings(tuned)
-            assert fleet.wait_for(lambda: first.state == "accepted", LIMIT_S), first.text
-            assert outcome_of(fleet, fleet.throw(ENTRY, 1, 5000)) == "unsent"
-            assert "spare with other settings" in fleet.model.go_line(fleet.clock()).text
-            second = session.send_settings(yard.records)
-            assert fleet.wait_for(lambda: second.state == "accepted", LIMIT_S), second.text
-            assert fleet.wait_for(lambda: is_ready(fleet), LIMIT_S)
-            assert outcome_of(fleet, fleet.throw(ENTRY, 1, 5000)) == "done"
-            assert len(pulses(servers[1])) == 1
+    with ExitStack() as stack:
+        servers = stack.enter_context(served((terminus, "T-1"), (yard, "S-9")))
+        fleet = stack.enter_context(fleet_at(layout, *[server.port for server in servers]))
+        assert fleet.wait_for(lambda: is_ready(fleet), LIMIT_S)
+        session = fleet.parts[YARD].session
+        tuned = [(message, list(values)) for message, values in yard.records]
+        for message, values in tuned:
+            if message.name == "set_timing":
+                values[message.position("pause_ms")] = 250
+        first = session.send_settings(tuned)
+        assert fleet.wait_for(lambda: first.state == "accepted", LIMIT_S), first.text
+        assert outcome_of(fleet, fleet.throw(ENTRY, 1, 5000)) == "unsent"
+        assert "spare with other settings" in fleet.model.go_line(fleet.clock()).text
+        second = session.send_settings(yard.records)
+        assert fleet.wait_for(lambda: second.state == "accepted", LIMIT_S), second.text
+        assert fleet.wait_for(lambda: is_ready(fleet), LIMIT_S)
+        assert outcome_of(fleet, fleet.throw(ENTRY, 1, 5000)) == "done"
+        assert len(pulses(servers[1])) == 1
 
 
 def test_two_boards_of_one_id() -> None:
     layout = load_layout(REEDHOLME)
     terminus, yard = layout.boards
-    with served((terminus, "virtual-1"), (yard, "virtual-2"), (yard, "virtual-2")) as servers:
-        with fleet_at(layout, *[server.port for server in servers]) as fleet:
-            assert fleet.wait_for(lambda: all(port.text for port in fleet.ports[1:]), LIMIT_S)
-            assert all("two boards say that they are 'virtual-2'" in port.text for port in fleet.ports[1:])
-            assert outcome_of(fleet, fleet.throw(ENTRY, 1, 5000)) == "unsent"
-            assert outcome_of(fleet, fleet.throw(THROAT, 1, 5000)) == "done"
-            servers[2].close()
-            assert fleet.wait_for(lambda: is_ready(fleet), LIMIT_S)
-            assert outcome_of(fleet, fleet.throw(ENTRY, 1, 5000)) == "done"
-            assert pulses(servers[2]) == [] and len(pulses(servers[1])) == 1
+    with ExitStack() as stack:
+        servers = stack.enter_context(served((terminus, "virtual-1"), (yard, "virtual-2"), (yard, "virtual-2")))
+        fleet = stack.enter_context(fleet_at(layout, *[server.port for server in servers]))
+        assert fleet.wait_for(lambda: all(port.text for port in fleet.ports[1:]), LIMIT_S)
+        assert all("two boards say that they are 'virtual-2'" in port.text for port in fleet.ports[1:])
+        assert outcome_of(fleet, fleet.throw(ENTRY, 1, 5000)) == "unsent"
+        assert outcome_of(fleet, fleet.throw(THROAT, 1, 5000)) == "done"
+        servers[2].close()
+        assert fleet.wait_for(lambda: is_ready(fleet), LIMIT_S)
+        assert outcome_of(fleet, fleet.throw(ENTRY, 1, 5000)) == "done"
+        assert pulses(servers[2]) == [] and len(pulses(servers[1])) == 1

@@ -4,6 +4,8 @@ from pathlib import Path
 
 import pytest
 
+from host.link import LinkChange
+from host.link_errors import PermissionDenied, WrongVersion
 from host.seats import address_of
 from shared_protocol import messages
 from tests.host.fleet_bench import ENTRY, TERMINUS, THROAT, YARD, Bench, with_ids
@@ -61,8 +63,8 @@ def test_a_board_of_no_layout_is_not_used(tmp_path: Path) -> None:
     bench = Bench(with_ids(tmp_path, "T", "Y"))
     bench.comes(0, TERMINUS, uid="stranger", address=3)
     text = bench.fleet.ports[0].text
-    assert text == "port-0: the layout file does not name the board 'stranger', and no board has its address 3"
-    assert text in bench.events() and port_of(bench, TERMINUS) == ""
+    assert text == "the layout file does not name the board 'stranger', and no board has its address 3"
+    assert f"port-0: {text}" in bench.events() and port_of(bench, TERMINUS) == ""
     number = bench.fleet.throw(THROAT, 1)
     found = bench.fleet.outcome_of(number)
     assert found is not None and found.outcome == "unsent"
@@ -104,7 +106,18 @@ def test_a_spare_takes_the_place_of_the_board_of_its_address(tmp_path: Path) -> 
     bench.comes(1, YARD)
     assert port_of(bench, YARD) == "port-1" and not bench.fleet.boards[YARD].seat.spare
     assert any("the spare for board Yard is not used any more" in text for text in bench.events())
+    assert "board Yard, of the same address 2, is there already" in bench.fleet.ports[2].text
     assert not bench.sent(1, "throw"), "what was asked of the spare is not asked again"
+
+
+def test_a_spare_that_waits_takes_the_place_when_another_board_is_at_the_port(tmp_path: Path) -> None:
+    bench = Bench(with_ids(tmp_path, "T", "Y"))
+    bench.comes(0, YARD)
+    bench.comes(1, YARD, uid="S")
+    assert port_of(bench, YARD) == "port-0"
+    bench.links[0].greets(9, bench.layout.boards[TERMINUS].crc(), "T", "3 banks address 1")
+    bench.fleet.poll()
+    assert (port_of(bench, TERMINUS), port_of(bench, YARD)) == ("port-0", "port-1")
 
 
 def test_a_spare_with_other_settings_is_shown_and_refused_until_it_has_them(tmp_path: Path) -> None:
@@ -149,7 +162,7 @@ def test_a_board_without_its_harness_does_not_put_out_the_spare_that_has_it(tmp_
     bench.comes(0, YARD, uid="S")
     bench.comes(1, YARD, address=0)
     assert port_of(bench, YARD) == "port-0" and bench.fleet.boards[YARD].seat.spare
-    assert bench.fleet.ports[1].text == "port-1: board Yard says address 0, its spare 2: the spare is used"
+    assert bench.fleet.ports[1].text == "board Yard says address 0, its spare 2: the spare is used"
     # Without a spare it is used, and its address is pointed out.
     bench.goes(0)
     assert port_of(bench, YARD) == "port-1"
@@ -162,3 +175,20 @@ def test_without_ids_in_the_file_addresses_tell_and_nobody_is_a_spare() -> None:
     bench.comes(1, TERMINUS, uid="E66B")
     assert (port_of(bench, YARD), port_of(bench, TERMINUS)) == ("port-0", "port-1")
     assert not any(part.seat.spare for part in bench.fleet.boards)
+
+
+def test_what_is_wrong_at_a_port_is_said(tmp_path: Path) -> None:
+    bench = Bench()
+    for port, error in ((0, PermissionDenied("port-0")), (1, WrongVersion("port-1", 1, 2, "9.0.0"))):
+        bench.links[port].received.put(LinkChange("refused" if port else "lost", str(error), error))
+    bench.fleet.poll()
+    line = bench.model.go_line(bench.clock.now_s)
+    assert line.level == "lost" and line.text.startswith("port-0: you may not open this port; on Linux join the group")
+    assert [event.level for event in bench.model.events] == ["warn", "bad"]
+    assert "the board (firmware 9.0.0) version 2" in bench.events()[1]
+    # The same again is not said again; a board that comes is what counts.
+    bench.links[0].received.put(LinkChange("lost", str(PermissionDenied("port-0"))))
+    bench.fleet.poll()
+    assert len(bench.events()) == 2
+    bench.comes(0, TERMINUS)
+    assert bench.model.go_line(bench.clock.now_s).text.startswith("board Yard not connected: 3 junctions unavailable")

@@ -153,6 +153,14 @@ def test_a_stop_button_that_stops_one_board_alone_is_pointed_out(tmp_path: Path)
     assert load_text(tmp_path, text).warnings == ["a stop button stops its own board alone; without one: 'Down'"]
 
 
+def test_boards_that_could_not_be_told_apart_are_pointed_out(tmp_path: Path) -> None:
+    said = "without uid, or an address of its own, a real board can't be told from others"
+    text = TWO.replace("address = 1\n", "").replace("address = 2\n", "")
+    assert load_text(tmp_path, text).warnings == [f"board 'Down': {said}"]
+    text = text.replace('uid = "E6614103E7"\n', "")
+    assert load_text(tmp_path, text).warnings == [f"board 'Up': {said}", f"board 'Down': {said}"]
+
+
 def test_the_shipped_layout_of_two_boards_is_right() -> None:
     layout = load_layout(SHIPPED)
     assert layout.warnings == []

@@ -64,8 +64,8 @@ COIL = table.SET_MOTOR.fields[table.SET_MOTOR.position("coil_cohm")]
         (READY, "12400 us", "is a number of mV, not in us"),
         (READY, "12400.5", "is a whole number of mV"),
         (READY, "9" * 40, "is a number of mV"),
-        (word("w", ("no", "yes"), "", 0), "Yes", 1),
-        (word("w", ("no", "yes"), "", 0), "maybe", "is one of: no, yes"),
+        (word("w", ("no", "yes"), 0), "Yes", 1),
+        (word("w", ("no", "yes"), 0), "maybe", "is one of: no, yes"),
     ],
 )
 def test_values_are_read_exactly_or_refused_with_a_sentence(field: object, text: str, value: object) -> None:
