@@ -1,1 +1,0 @@
-"""The firmware's way onto a board."""
