@@ -112,12 +112,28 @@ state: Telemetry of the board.
     bad: Lines that were not understood.
     in1: Inputs 0 to 23, 1 = closed.
     in2: Inputs 24 to 47.
+trace: Asks for the discharge of a bank's last pulse.
+    b: Number of the bank.
+started: Why the board started, if it was not simply switched on; told after each first exchange.
+    cause: The cause.
+    note: What the crash before it left; empty if there was none.
+loop: How the board's loop goes; once a second, from boards that know.
+    us [us]: Mean time once round the loop; -1 unknown.
+    worst [us]: Longest time once round since the last such message.
+    collect [us]: Longest collection of garbage since the last such message; 0 for none.
+    adc [1/s]: Samples a second of one bank's voltage; -1 unknown.
+    free [bytes]: Free memory after the last collection; -1 unknown.
+points: Some points of a discharge, in order.
+    b: Number of the bank.
+    from: Number of the first point.
+    step [us]: Time from point to point; point 0 is at the beginning of the pulse.
+    mv [mV]: The points; 0 also stands for a gap.
 end: All of it has been told.
     what: What was asked for.
 """
 
 from shared_protocol import words
-from shared_protocol.fields import INT_MAX, Message, explain, name, whole, word
+from shared_protocol.fields import INT_MAX, Message, explain, name, numbers, whole, word
 
 VERSION = 1
 FIRMWARE = b"1.0.0"
@@ -132,8 +148,10 @@ _WHY = word("why", words.REASONS)
 
 REQUESTS = ("release", "clear", "cancel", "stage", "commit", "stop", "restart", "ask")
 TO_RELEASE, TO_CLEAR, TO_CANCEL, TO_STAGE, TO_COMMIT, TO_STOP, TO_RESTART, TO_ASK = 0, 1, 2, 3, 4, 5, 6, 7
-QUESTIONS = ("status", "settings")
-ASK_STATUS, ASK_SETTINGS = 0, 1
+QUESTIONS = ("status", "settings", "trace")
+ASK_STATUS, ASK_SETTINGS, ASK_TRACE = 0, 1, 2
+# Points in one message.
+POINTS_A_LINE = 16
 
 # ---- from the host to the board
 
@@ -327,6 +345,28 @@ STATE = Message(
 )
 END = Message("end", (word("what", QUESTIONS),))
 
+TRACE = Message("trace", (whole("b", 0, 2),))
+STARTED = Message("started", (word("cause", words.CAUSES), name("note", 150)))
+LOOP = Message(
+    "loop",
+    (
+        whole("us", -1, INT_MAX),
+        whole("worst", 0, INT_MAX),
+        whole("collect", 0, INT_MAX),
+        whole("adc", -1, INT_MAX),
+        whole("free", -1, INT_MAX),
+    ),
+)
+POINTS = Message(
+    "points",
+    (
+        whole("b", 0, 2),
+        whole("from", 0, 1000),
+        whole("step", 0, INT_MAX),
+        numbers("mv", 0, 40_000, POINTS_A_LINE),
+    ),
+)
+
 TO_BOARD = (
     HELLO,
     ALIVE,
@@ -342,6 +382,7 @@ TO_BOARD = (
     COMMIT,
     ABANDON,
     RESTART,
+    TRACE,
 )
 TO_HOST = (
     BOARD,
@@ -360,6 +401,9 @@ TO_HOST = (
     EXPECT,
     STATE,
     END,
+    STARTED,
+    LOOP,
+    POINTS,
 )
 
 explain(globals().get("__doc__"), TO_BOARD + TO_HOST)

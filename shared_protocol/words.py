@@ -193,6 +193,9 @@ REASONS = (
     "not_a_setting",
 )
 
+# Why a board started.
+CAUSES = ("power", "watchdog", "brown_out", "request", "crash", "unknown")
+
 # The number of a fault (from 1) is its blink code.
 FAULTS = (
     "none",

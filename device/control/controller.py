@@ -10,6 +10,7 @@ from device.control.endpoint import Endpoint
 from device.control.firing import Firing
 from device.control.followers import PERIOD_MS, Followers
 from device.control.lies import LieKeeper
+from device.control.light import Light
 from device.control.memory import RequestMemory
 from device.control.outbox import Outbox
 from device.control.plant import Plant
@@ -56,6 +57,7 @@ class Controller:
         self.memory = RequestMemory(self.outbox)
         self.requests = Requests(self)
         self.lies = LieKeeper(board)
+        self._light = Light(board)
         self.plant: "Plant | None" = None
         self.queue: "Queue | None" = None
         self._firing: "Firing | None" = None
@@ -266,6 +268,7 @@ class Controller:
 
     def _slice_host(self, now_ms: int) -> None:
         self.board.feed_watchdog()
+        self._light.tick(self.plant, now_ms)
         self._watch_host(now_ms)
         self.endpoint.sweep(now_ms)
         self.teller.sweep(now_ms)

@@ -48,6 +48,8 @@ class Requests:
             self._throw(values, now_ms)
         elif message is messages.ROUTE:
             self._route(values, now_ms)
+        elif message is messages.TRACE:
+            self._controller.teller.begin_trace(number(values, 0))
         elif message is not messages.ALIVE:
             self._with_boot(decoded, now_ms)
 
@@ -78,12 +80,21 @@ class Requests:
         values[4] = board.boot
         values[5] = controller.store.crc
         values[6] = board.caps
+        if board.cause or board.crash:
+            values = controller.outbox.plain(messages.STARTED)
+            values[0] = board.cause
+            values[1] = board.crash
+            if board.crash:
+                board.forget_crash()
         controller.outbox.again()
 
     def _ask(self, what: int) -> None:
         controller = self._controller
         if what == messages.ASK_STATUS:
             controller.teller.begin_status()
+        elif what == messages.ASK_TRACE:
+            # A trace is asked for by its own message, which names the bank.
+            self._answer(messages.TO_ASK, WHY_NO_SUCH_THROW, -1)
         elif controller.teller.sending_settings:
             self._answer(messages.TO_ASK, WHY_BUSY, -1)
         else:

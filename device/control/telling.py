@@ -12,6 +12,8 @@ TYPE_CHECKING = False
 if TYPE_CHECKING:
     from device.board.seam import Board
 
+# As in device.board.seam.
+LOOP_US, WORST_US, COLLECT_US, ADC_HZ, HEAP_FREE = 0, 1, 2, 3, 4
 _BANKS, _EXPECT, _SECOND = 0, 1, 2
 EXPECT_MS = 500
 EXPECT_SOON_MS = 200
@@ -31,6 +33,10 @@ class Teller:
         # Of the telemetry that is being sent: the next bank, the next throw.
         self._next_bank = _NOTHING
         self._next_throw = _NOTHING
+        self._trace_bank = _NOTHING
+        self._trace_point = 0
+        self._points = [0] * messages.POINTS_A_LINE
+        self._loop_s = 0
         self.up_s = 0
         self.bad_lines = 0
 
@@ -42,6 +48,40 @@ class Teller:
             if passed != LONG_AGO:
                 self.up_s += passed // 1000
         self._marks.sweep(now_ms)
+
+    # ---- traces
+
+    def begin_trace(self, bank: int) -> None:
+        """Send the discharge of a bank's last pulse, a line of points whenever the link is idle."""
+        self._trace_bank = bank
+        self._trace_point = 0
+
+    def _tell_points(self) -> None:
+        """The next points. There is one list for them: the line before must be out."""
+        outbox = self._outbox
+        if not outbox.quiet or outbox.to_send:
+            return
+        board = self._board
+        bank = self._trace_bank
+        first = self._trace_point
+        left = board.trace_points(bank) - first
+        if left <= 0:
+            self._trace_bank = _NOTHING
+            values = outbox.plain(messages.END)
+            values[0] = messages.ASK_TRACE
+            return
+        points = self._points
+        while points:
+            points.pop()
+        for point in range(first, first + min(left, messages.POINTS_A_LINE)):
+            mv = board.trace_mv(bank, point)
+            points.append(mv if mv > 0 else 0)
+        self._trace_point = first + len(points)
+        values = outbox.plain(messages.POINTS)
+        values[0] = bank
+        values[1] = first
+        values[2] = board.trace_step_us()
+        values[3] = points
 
     # ---- answers of many lines
 
@@ -66,7 +106,7 @@ class Teller:
     @property
     def telemetry(self) -> bool:
         """True while lines of telemetry are still to come."""
-        return self._next_bank >= 0 or self._next_throw >= 0
+        return self._next_bank >= 0 or self._next_throw >= 0 or self._trace_bank >= 0
 
     @property
     def wants_record(self) -> bool:
@@ -97,6 +137,8 @@ class Teller:
             self._tell_one_bank(plant, queue, now_ms)
         elif self._next_throw >= 0:
             self._tell_one_throw(queue, now_ms)
+        elif self._trace_bank >= 0:
+            self._tell_points()
         elif queue.throws.count:
             since_ms = self._marks.since(_EXPECT, now_ms)
             if since_ms >= EXPECT_MS or (queue.throws.changed and since_ms >= EXPECT_SOON_MS):
@@ -117,6 +159,22 @@ class Teller:
             return
         self._next_bank = _NOTHING
         self._tell_state(plant, queue)
+        if self.up_s != self._loop_s:
+            self._loop_s = self.up_s
+            self._tell_loop()
+
+    def _tell_loop(self) -> None:
+        """How the loop goes, from a board that knows."""
+        board = self._board
+        mean_us = board.figure(LOOP_US)
+        if mean_us < 0:
+            return
+        values = self._outbox.plain(messages.LOOP)
+        values[0] = mean_us
+        values[1] = board.figure(WORST_US)
+        values[2] = board.figure(COLLECT_US)
+        values[3] = board.figure(ADC_HZ)
+        values[4] = board.figure(HEAP_FREE)
 
     def _tell_one_throw(self, queue: Queue, now_ms: int) -> None:
         """One line of what the queue expects."""

@@ -7,7 +7,7 @@ from collections.abc import Sequence
 from pathlib import Path
 from typing import Any
 
-from host.cli import boards, control, desk, rehearsing, settings, throwing, virtual
+from host.cli import board, boards, control, desk, rehearsing, settings, throwing, virtual
 from host.cli.common import BAD, NO, Wrong, complain
 from host.link_errors import LinkError
 
@@ -41,7 +41,7 @@ def make_parser() -> argparse.ArgumentParser:
         prog="coilwarden", description="Guards capacitor-discharge turnout motors.", epilog=_EPILOG
     )
     commands = parser.add_subparsers(dest="command", metavar="COMMAND")
-    for module in (desk, boards, throwing, control, settings, rehearsing, virtual):
+    for module in (desk, boards, throwing, control, settings, rehearsing, virtual, board):
         module.add(commands, shared)
     return parser
 

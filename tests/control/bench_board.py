@@ -52,6 +52,9 @@ class BenchBoard(Board):
         self.slots: "dict[int, list[bytes]]" = {}
         self._open = -1
         self._reading: "list[bytes]" = []
+        self.light = False
+        self.figures = [-1, 0, 0, -1, -1]
+        self.trace_count = 0
         self.settings: object = None
         self.settle_ms = 5
         self.gap_ms = 20
@@ -187,6 +190,24 @@ class BenchBoard(Board):
         self._outgoing[self.out_count] = byte
         self.out_count += 1
         return True
+
+    def led(self, on: bool) -> None:
+        self.light = on
+
+    def figure(self, which: int) -> int:
+        return self.figures[which]
+
+    def trace_points(self, bank: int) -> int:
+        return self.trace_count
+
+    def trace_mv(self, bank: int, point: int) -> int:
+        return 16_000 - 100 * point
+
+    def trace_step_us(self) -> int:
+        return 500
+
+    def forget_crash(self) -> None:
+        self.crash = b""
 
     def slot_rewind(self, slot: int) -> bool:
         self._reading = list(self.slots.get(slot, []))

@@ -253,3 +253,51 @@ def case_power_lost_at_any_line_leaves_one_whole_set() -> None:
         assert again.controller.store.sequence == (2 if cut == lines else 1)
         again.run(500)
         assert not board.pulses
+
+
+def case_a_trace_is_told_point_by_point() -> None:
+    bench = connected()
+    bench.board.trace_count = 37
+    bench.send("trace", b=0)
+    bench.keep_alive(600)
+    told: "list[object]" = []
+    for line in bench.all("points"):
+        assert line["from"] == len(told) and line["step"] == 500
+        told += line["mv"]  # type: ignore[operator]
+    assert told == [16_000 - 100 * point for point in range(37)]
+    assert bench.all("end")[-1]["what"] == "trace"
+
+
+def case_a_board_that_knows_tells_how_its_loop_goes() -> None:
+    bench = connected()
+    bench.keep_alive(1500)
+    assert bench.all("loop") == []
+    bench.board.figures = [300, 900, 12_000, 50_000, 40_000]
+    bench.keep_alive(2500)
+    assert bench.last("loop") == {"us": 300, "worst": 900, "collect": 12_000, "adc": 50_000, "free": 40_000}
+    assert 2 <= len(bench.all("loop")) <= 3
+
+
+def case_a_crash_is_told_once() -> None:
+    bench = connected()
+    assert bench.all("started") == []
+    bench.board.cause = 4
+    bench.board.crash = b"MemoryError: no room"
+    bench.hello()
+    assert bench.last("started") == {"cause": "crash", "note": "MemoryError: no room"}
+    bench.hello()
+    assert bench.last("started") == {"cause": "crash", "note": ""}
+
+
+def case_the_light_blinks_the_number_of_the_fault() -> None:
+    bench = connected()
+    bench.controller.plant.faults.report(0, 1, 3, 0, 0, -1)  # type: ignore[union-attr]
+    bench.run(5)
+    blinks = 0
+    was = bench.board.light
+    for _ in range(3 * 400 + 1200):
+        bench.run(1)
+        if bench.board.light and not was:
+            blinks += 1
+        was = bench.board.light
+    assert blinks == 3
