@@ -127,7 +127,7 @@ points: Some points of a discharge, in order.
     b: Number of the bank.
     from: Number of the first point.
     step [us]: Time from point to point; point 0 is at the beginning of the pulse.
-    mv [mV]: The points; 0 also stands for a gap.
+    mv [mV]: The points; 0 stands for a gap, and fills the last line up.
 end: All of it has been told.
     what: What was asked for.
 """

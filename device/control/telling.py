@@ -71,11 +71,10 @@ class Teller:
             values[0] = messages.ASK_TRACE
             return
         points = self._points
-        while points:
-            points.pop()
-        for point in range(first, first + min(left, messages.POINTS_A_LINE)):
-            mv = board.trace_mv(bank, point)
-            points.append(mv if mv > 0 else 0)
+        for place in range(messages.POINTS_A_LINE):
+            # The last line is filled up: a list that shrinks would have to grow again, in the tick.
+            mv = board.trace_mv(bank, first + place) if place < left else -1
+            points[place] = mv if mv > 0 else 0
         self._trace_point = first + len(points)
         values = outbox.plain(messages.POINTS)
         values[0] = bank

@@ -1,0 +1,1 @@
+"""The firmware's way onto a board."""
