@@ -127,6 +127,9 @@ class Firing:
 
     def start(self, throw: Throw, plan: PulsePlan, now_ms: int) -> None:
         """Give the pulse that `plan` holds for `throw`. If the hardware refuses, the throw goes on waiting."""
+        if self._on_bank[plan.bank] is not None:
+            # The pulse before is over, but not judged yet: it must not be forgotten.
+            return
         gate = self._plant.banks[plan.bank]
         mean_mv = self._board.bank_mean_mv(plan.bank)
         if mean_mv < 0 or mean_mv > gate.most_mv:

@@ -576,3 +576,20 @@ def case_junction_on_a_single_bank_board() -> None:
     number = bench.throw(0, 1)
     bench.run(100)
     assert outcome_of(bench, number) == ("done", "sent")
+
+
+def case_a_pulse_is_judged_before_the_next_of_its_bank() -> None:
+    """Between two milliseconds only voltages are looked at: the next throw must not push an unjudged one out."""
+    bench = ready()
+    bench.board.banks[0].drop_percent = 20
+    first = bench.throw(0, 1, 3000)
+    second = bench.throw(1, 1, 3000)
+    while bench.board.pulse_count == 0:
+        bench.run(1)
+    bench.board.pass_us(100_000)
+    bench.controller.plant.changes.happened = True  # type: ignore[union-attr]
+    bench.controller.queue.dispatch.tick(bench.board.ticks_ms())  # type: ignore[union-attr]
+    assert bench.board.pulse_count == 1
+    bench.keep_alive(1500)
+    assert outcome_of(bench, first)[0] is not None
+    assert outcome_of(bench, second)[0] is not None
