@@ -588,6 +588,8 @@ def case_a_pulse_is_judged_before_the_next_of_its_bank() -> None:
         bench.run(1)
     for _ in range(10):
         bench.board.pass_us(10_000)
+    # A slice has seen that the pulse and its gap are over.
+    bench.controller.plant.banks[0].look()  # type: ignore[union-attr]
     bench.controller.plant.changes.happened = True  # type: ignore[union-attr]
     bench.controller.queue.dispatch.tick(bench.board.ticks_ms())  # type: ignore[union-attr]
     assert bench.board.pulse_count == 1
