@@ -20,6 +20,9 @@ from shared_protocol.settings import (
 # RP2040 boards of the usual shape bring out pins 0 to 22 and 26 to 28; 26 to 28 are the ADC inputs 0 to 2.
 ADC_PIN_0 = 26
 LAST_PIN = 22
+# Read at the start, before settings are known: linked to 3.3 V it asks for a plain prompt. An input there, pulled up by
+# its own resistor, would ask for it as well.
+BOOT_PIN = 22
 
 # A driver failed short must leave the coil under this (see the decision on drivers failed short).
 COIL_LIMIT_MW = 1000
@@ -101,6 +104,8 @@ def _take_pins(settings: Settings, use: PinUse) -> "Problem | None":
     ):
         for pin in pins:
             why = use.take(pin)
+            if pin == BOOT_PIN and field != "outputs":
+                why = "pin_not_usable"
             if why:
                 return _at(settings, io, field, why)
     if (io.in_chain > 0) != (len(io.in_pins) == 3):

@@ -12,7 +12,7 @@ if TYPE_CHECKING:
 BOOT_FILE = "/boot.txt"
 CRASH_FILE = "/crash.txt"
 LINKS_FILE = "/links.txt"
-# Linked to 3.3 V at the start: a plain prompt and no loop. Pulled down inside, so that nothing means no link.
+# Linked to 3.3 V at the start: a plain prompt and no loop. Pulled down inside: nothing there means no link.
 BOOT_PIN = 22
 CRASH_TEXT = 150
 # A board that crashes so often before it has run for a minute stays at the prompt.

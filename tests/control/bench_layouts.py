@@ -57,7 +57,7 @@ def board_records(layout: BenchLayout, **fields: object) -> None:
     layout.add(table.SET_BOARD, **board)
     layout.add(table.SET_TIMING, **timing)
     layout.add(
-        table.SET_IO, inputs=[], in_chain=24, in_pins=[17, 18, 19], outputs=[], out_chain=24, out_pins=[20, 21, 22]
+        table.SET_IO, inputs=[], in_chain=24, in_pins=[17, 18, 19], outputs=[], out_chain=24, out_pins=[20, 21, 28]
     )
 
 

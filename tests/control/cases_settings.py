@@ -301,3 +301,7 @@ def case_the_light_blinks_the_number_of_the_fault() -> None:
             blinks += 1
         was = bench.board.light
     assert blinks == 3
+
+
+def case_no_input_on_the_boot_pin() -> None:
+    refused(changed("set_io", 0, inputs=[22]), "inputs", "pin_not_usable")
