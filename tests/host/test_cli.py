@@ -354,7 +354,10 @@ def test_interrupted_means_cancelled(capsys: pytest.CaptureFixture[str]) -> None
     with virtual:
         where = ("--port", f"socket://127.0.0.1:{virtual.port}")
         argv = [sys.executable, "-m", "host", "throw", "Throat", "reverse", "--wait", "60000", *where]
-        waiting = subprocess.Popen(argv, stderr=subprocess.PIPE, text=True)
+        # Where the tests run in the background the shell has them ignore this signal; a person's terminal does not.
+        waiting = subprocess.Popen(
+            argv, stderr=subprocess.PIPE, text=True, preexec_fn=lambda: signal.signal(signal.SIGINT, signal.SIG_DFL)
+        )
         assert wait_until(virtual.script.attached.is_set)
         # Until the board has had the request and some time to fire it.
         time.sleep(1.0)
